@@ -1,0 +1,1 @@
+"""What the spring goes through: records, counting, the schedule of one pass."""

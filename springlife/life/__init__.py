@@ -1,0 +1,1 @@
+"""The judgement: the case, damage, findings, life."""

@@ -1,0 +1,1 @@
+"""What is handed on: figures, the page and the sheet."""

@@ -1,0 +1,1 @@
+"""The part: wire grades, geometry, stress."""

@@ -1,0 +1,1 @@
+"""What the wire endures: criteria, endurance data, finite-life curves."""
