@@ -177,3 +177,35 @@ def significant(number: float, digits: int = 4) -> str:
         return text.rstrip("0").rstrip(".") if "." in text else text
     mantissa, exponent = f"{rounded:.{digits - 1}e}".split("e")
     return f"{mantissa.rstrip('0').rstrip('.')}e{int(exponent)}"
+
+
+def ratio(amount: str, per: str) -> float:
+    """Return how many ``per`` make up ``amount``: ``ratio("8000 h", "2.5 h")`` is 3200.
+
+    Either both are physical quantities of one dimension, or both use the same counting word
+    ("1 start", "20000 starts").
+
+    Raises
+    ------
+    InputError
+        When the two cannot be compared, or ``per`` is zero.
+    """
+    (top, top_unit), (bottom, bottom_unit) = split(amount), split(per)
+    if bottom == 0:
+        raise InputError(f"{per!r} is zero; one pass must be greater than zero")
+    if _word(top_unit) == _word(bottom_unit):
+        return top / bottom
+    if not (is_unit(top_unit) and is_unit(bottom_unit)):
+        raise InputError(f"{amount!r} cannot be counted in {per!r}; use one unit or counting word for both")
+    registry = _registry()
+    above, below = registry.Quantity(top, _unit(top_unit)), registry.Quantity(bottom, _unit(bottom_unit))
+    if above.dimensionality != below.dimensionality:
+        raise InputError(f"{amount!r} cannot be converted to {per!r}; use units of one kind for both")
+    return float((above / below).to("").magnitude)
+
+
+def _word(unit: str) -> str:
+    """Singular and plural of a counting word are one word."""
+    if unit.endswith(("sses", "ches", "shes")):
+        return unit[:-2]
+    return unit[:-1] if len(unit) > 3 and unit.endswith("s") and not unit.endswith("ss") else unit
