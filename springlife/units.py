@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import math
 import re
+from dataclasses import dataclass
 from functools import cache
 from typing import TYPE_CHECKING, Any
 
@@ -209,3 +210,40 @@ def _word(unit: str) -> str:
     if unit.endswith(("sses", "ches", "shes")):
         return unit[:-2]
     return unit[:-1] if len(unit) > 3 and unit.endswith("s") and not unit.endswith("ss") else unit
+
+
+@dataclass(frozen=True)
+class UnitSystem:
+    """The units in which a person reads results: those of the drawing."""
+
+    name: str
+    units: dict[str, str]
+
+    def __call__(self, value: float | None, kind: str, digits: int = 4) -> str:
+        """Write an SI value of one kind with its unit."""
+        return show(value, self.units[kind], kind, digits)
+
+    def number(self, value: float, kind: str, digits: int = 4) -> str:
+        """Write an SI value without its unit, for table columns that name it once."""
+        return significant(convert(value, self.units[kind], kind), digits)
+
+
+_COMMON = {"time": "h", "frequency": "Hz", "velocity": "m/s"}
+METRIC = UnitSystem(
+    "metric",
+    {
+        "length": "mm", "force": "N", "stress": "MPa", "rate": "N/mm", "mass": "g", "temperature": "degC", **_COMMON
+    },
+)  # fmt: skip
+INCH = UnitSystem(
+    "inch",
+    {
+        "length": "in", "force": "lbf", "stress": "kpsi", "rate": "lbf/in", "mass": "lb", "temperature": "degF",
+        **_COMMON,
+    },
+)  # fmt: skip
+
+
+def system_of(length: str) -> UnitSystem:
+    """Choose the system of a length written in a drawing: inches and feet read as inch units."""
+    return INCH if split(length)[1] in {"in", "inch", "inches", "ft", "foot", "mil", "thou"} else METRIC

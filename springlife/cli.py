@@ -1,0 +1,180 @@
+"""The command line: thin commands over the package; no engineering here.
+
+Results go to stdout, progress and warnings to stderr. Exit codes: 0 meets the target, 1 falls short,
+2 bad usage or bad input, 3 judgement withheld.
+"""
+
+from __future__ import annotations
+
+import argparse
+import sys
+from collections.abc import Callable, Sequence
+from pathlib import Path
+from typing import Any, NoReturn
+
+from springlife import __version__
+from springlife.errors import InputError, SpringlifeError
+
+EXIT = {"meets": 0, "falls short": 1, "withheld": 3}
+CAUTION = (
+    "Estimates from handbook strengths scatter by a factor of ten or more in life. A spring whose failure can hurt "
+    "someone needs tests of the part, the applicable codes and the judgement of a licensed engineer."
+)
+
+
+class _Parser(argparse.ArgumentParser):
+    """One sentence for a usage error, as for every other error."""
+
+    def error(self, message: str) -> NoReturn:
+        self.exit(2, f"springlife: {message}; see {self.prog} --help\n")
+
+
+def main(argv: Sequence[str] | None = None) -> int:
+    """Run one command and return its exit code."""
+    arguments = _parser().parse_args(argv)
+    if not hasattr(arguments, "run"):
+        _parser().print_help()
+        return 2
+    try:
+        return int(arguments.run(arguments))
+    except SpringlifeError as error:
+        print("\n".join(f"springlife: {line}" for line in str(error).splitlines()), file=sys.stderr)
+        return 2
+    except KeyboardInterrupt:
+        print("springlife: stopped; nothing was written", file=sys.stderr)
+        return 130
+    except BrokenPipeError:
+        # The reader of a pipe went away: nobody is left to tell.
+        sys.stderr.close()
+        return 0
+
+
+def run() -> NoReturn:
+    """Entry point of the console script."""
+    sys.exit(main())
+
+
+def _parser() -> argparse.ArgumentParser:
+    parser = _Parser(
+        prog="springlife",
+        description="Fatigue life of helical compression springs under recorded or specified duty.",
+        epilog=CAUTION,
+    )
+    parser.add_argument("--version", action="version", version=f"springlife {__version__}")
+    commands = parser.add_subparsers(title="commands", metavar="COMMAND", parser_class=_Parser)
+    _case_command(commands, "assess", _assess, "judge a case: life, damage, margin, findings")
+    _case_command(commands, "check", _check, "read everything a case names, judge nothing")
+    _count_command(commands)
+    grades = commands.add_parser("grades", help="list the wire grades with their strengths", epilog=CAUTION)
+    grades.add_argument("grade", nargs="?", help="one grade in full")
+    grades.add_argument("--file", metavar="GRADES.toml", type=Path, help="a grades file of your own")
+    _finish(grades, _grades)
+    return parser
+
+
+def _case_command(commands: Any, name: str, run: Callable[[argparse.Namespace], int], text: str) -> None:
+    parser = commands.add_parser(name, help=text, description=text[0].upper() + text[1:] + ".", epilog=CAUTION)
+    parser.add_argument("case", metavar="CASE", type=Path, help="the case file (TOML)")
+    _finish(parser, run)
+
+
+def _finish(parser: argparse.ArgumentParser, run: Callable[[argparse.Namespace], int]) -> None:
+    parser.add_argument("--json", action="store_true", help="print one JSON object")
+    parser.set_defaults(run=run)
+
+
+def _count_command(commands: Any) -> None:
+    text = "count the rainflow cycles of one record"
+    parser = commands.add_parser("count", help=text, description=text[0].upper() + text[1:] + ".", epilog=CAUTION)
+    parser.add_argument("record", metavar="RECORD", type=Path, help="the record, such as ride.csv")
+    parser.add_argument("--channel", help="column by name, or by number counted from 1")
+    parser.add_argument("--time", help="time column by name or number")
+    parser.add_argument("--time-unit", metavar="UNIT", help="unit of the time column, such as ms")
+    parser.add_argument("--rate", metavar="RATE", help="sample rate, such as '500 Hz'")
+    parser.add_argument("--unit", help="unit of the channel; counted as plain numbers without one")
+    parser.add_argument("--residue", choices=("half", "repeat", "drop"), default="half", help="default: half")
+    parser.add_argument("--gate", type=float, default=0.0, help="drop cycles with a range up to this, in the channel's unit")
+    parser.add_argument("--gaps", choices=("error", "split"), default="error", help="default: error")
+    parser.add_argument("--recount", action="store_true", help="recount with the rainflow package and compare")
+    parser.add_argument("--top", type=int, default=12, metavar="N", help="rows to print (default 12; 0 for all)")
+    _finish(parser, _count)
+
+
+def _print_json(data: Any) -> None:
+    import json
+
+    print(json.dumps(data, indent=2, allow_nan=False, ensure_ascii=False, default=str))
+
+
+def _assess(arguments: argparse.Namespace) -> int:
+    from springlife.life.assess import assess
+
+    result = assess(arguments.case)
+    if arguments.json:
+        _print_json(result.to_dict())
+    else:
+        from springlife.report.terminal import print_assessment
+
+        print_assessment(result, CAUTION)
+    return EXIT[result.verdict]
+
+
+def _check(arguments: argparse.Namespace) -> int:
+    from springlife.life.check import check
+
+    result = check(arguments.case)
+    if arguments.json:
+        _print_json(result.to_dict())
+    else:
+        from springlife.report.terminal import print_check
+
+        print_check(result)
+    return 3 if result.stopped else 0
+
+
+def _number_or_name(text: str | None) -> str | int | None:
+    return int(text) if text is not None and text.isdigit() else text
+
+
+def _count(arguments: argparse.Namespace) -> int:
+    from springlife import units
+    from springlife.life.tally import tally_record
+
+    result = tally_record(
+        arguments.record,
+        channel=_number_or_name(arguments.channel),
+        time=_number_or_name(arguments.time),
+        time_unit=arguments.time_unit,
+        sample_rate=None if arguments.rate is None else units.parse(arguments.rate, "frequency"),
+        unit=arguments.unit,
+        gate=arguments.gate,
+        gaps=arguments.gaps,
+        residue=arguments.residue,
+        recount=arguments.recount,
+    )
+    if arguments.top < 0:
+        raise InputError(f"--top is {arguments.top}; give 0 for all rows or a positive number")
+    if arguments.json:
+        _print_json(result.to_dict())
+    else:
+        from springlife.report.terminal import print_tally
+
+        print_tally(result, arguments.top)
+    return 0 if result.agrees in (None, True) else 1
+
+
+def _grades(arguments: argparse.Namespace) -> int:
+    from springlife.spring.grade import grade, grades
+
+    chosen = [grade(arguments.grade, arguments.file)] if arguments.grade else list(grades(arguments.file).values())
+    if arguments.json:
+        _print_json({"grades": [entry.to_dict() for entry in chosen]})
+    else:
+        from springlife.report.terminal import print_grades
+
+        print_grades(chosen, full=arguments.grade is not None)
+    return 0
+
+
+if __name__ == "__main__":
+    run()

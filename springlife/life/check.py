@@ -1,0 +1,133 @@
+"""Read everything a case names and judge nothing: what the file says, as the program understood it."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+from springlife.life import findings as notice
+from springlife.life.assess import part_of, say_of
+from springlife.life.case import Case, load_case
+from springlife.life.findings import Finding
+from springlife.life.limits import limit_values
+from springlife.life.reading import Duty, EventReading, read_duty
+from springlife.life.result import spring_facts
+from springlife.spring.helical import HelicalSpring
+from springlife.spring.stress import stress_map
+from springlife.units import UnitSystem, significant
+
+Rows = list[tuple[str, str]]
+
+
+@dataclass(frozen=True)
+class CheckResult:
+    """A case read in full."""
+
+    case: Case
+    spring: HelicalSpring | None
+    duty: Duty | None
+    findings: tuple[Finding, ...]
+
+    @property
+    def title(self) -> str:
+        """The case's title."""
+        return self.case.input.title
+
+    @property
+    def stopped(self) -> bool:
+        """Whether a stop stands that would withhold judgement."""
+        return any(finding.blocks for finding in self.findings)
+
+    @property
+    def sections(self) -> list[tuple[str, Rows]]:
+        """Headings with label and text, for a person."""
+        say = say_of(self.case)
+        parts: list[tuple[str, Rows]] = []
+        if self.spring:
+            parts.append(("Spring", _spring_rows(self.spring, say)))
+        if self.duty:
+            parts += [(f"Event {event.name!r}", _event_rows(event, say)) for event in self.duty.events]
+        return parts
+
+    def to_dict(self) -> dict[str, Any]:
+        """Give the check for JSON."""
+        events = self.duty.events if self.duty else ()
+        return {
+            "title": self.title,
+            "spring": spring_facts(self.spring) if self.spring else None,
+            "events": [
+                {
+                    "name": event.name,
+                    "repeats": event.repeats,
+                    "path": event.path.name if event.path else None,
+                    "sha256": event.sha256,
+                    "cycles": float(event.count.table("half").count.sum()),
+                    "record": event.summary.to_dict() if event.summary else None,
+                    "provenance": list(event.provenance),
+                }
+                for event in events
+            ],
+            "findings": [finding.to_dict() for finding in self.findings],
+        }
+
+
+def check(case: Case | str | Path) -> CheckResult:
+    """Read a case and its records; findings of the part and the motion only.
+
+    Raises
+    ------
+    FileError, InputError
+        When the case or a record cannot be used as given.
+    """
+    case = case if isinstance(case, Case) else load_case(case)
+    spring, seen = part_of(case)
+    if spring is None:
+        return CheckResult(case, None, None, notice.settle(seen, case.input.waive))
+    duty, seen = read_or_stop(case, spring)
+    if duty is not None:
+        say, limits = say_of(case), limit_values(case.input.limits)
+        stress = stress_map(spring, case.judge.stress_factor, case.judge.curvature_on)
+        seen = [
+            *notice.of_part(spring, case.spring, limits, say),
+            *notice.of_motion(spring, stress, duty, limits, say),
+        ]
+    return CheckResult(case, spring, duty, notice.settle(seen, case.input.waive))
+
+
+def read_or_stop(case: Case, spring: HelicalSpring) -> tuple[Duty | None, list[Finding]]:
+    """Read the duty; a record with gaps is a stop, not a crash."""
+    from springlife.errors import GapError
+
+    try:
+        return read_duty(case, spring), []
+    except GapError as error:
+        return None, [notice.found("gap", str(error))]
+
+
+def _spring_rows(spring: HelicalSpring, say: UnitSystem) -> Rows:
+    return [
+        ("wire", f"{spring.grade.title}, {say(spring.wire_diameter, 'length')}, Sut {say(spring.Sut, 'stress')}"),
+        ("coil", f"mean diameter {say(spring.mean_diameter, 'length')}, index {significant(spring.index, 3)}, "
+                 f"{significant(spring.active_coils)} active of {significant(spring.total_coils)} coils, {spring.ends}"),
+        ("length", f"free {say(spring.free_length, 'length')}, solid {say(spring.solid_length, 'length')}"),
+        ("rate", say(spring.rate, "rate") + (
+            f" (measured; {say(spring.calculated_rate, 'rate')} calculated)" if spring.measured_rate else "")),
+        ("solid", f"deflection {say(spring.solid_deflection, 'length')}, force {say(spring.solid_force, 'force')}"),
+        ("mass", f"{say(spring.mass, 'mass')}, surge frequency {say(spring.surge_frequency, 'frequency')}"),
+    ]  # fmt: skip
+
+
+def _event_rows(event: EventReading, say: UnitSystem) -> Rows:
+    kind = "force" if event.measures == "force" else "length"
+    c = event.count
+    rows = [
+        ("happens", f"{event.repeats} times a pass"),
+        ("cycles", f"{significant(float(c.table('half').count.sum()), 6)} counted, residue of {c.residue.size} points"),
+        ("extremes", f"{say(c.minimum, kind)} to {say(c.maximum, kind)} {event.measures}"),
+    ]
+    if event.path is not None:
+        rows.insert(0, ("record", f"{event.path.name}, sha256 {(event.sha256 or '')[:16]}…"))
+    if event.summary is not None:
+        rows += event.summary.lines()
+    return rows + [("read", line) for line in event.provenance]

@@ -1,0 +1,200 @@
+"""Read and count the duty of a case once; every option is judged from these counts.
+
+Each event keeps its count in the recorded quantity (SI) with the straight line that turns it into
+deflection, so that a change of free length or rate never touches the record again.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from functools import cached_property
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from springlife.duty.counting import Count, count
+from springlife.duty.schedule import Event, Pass
+
+if TYPE_CHECKING:
+    from springlife.duty.record import RecordSummary
+    from springlife.life.case import Case, EventInput
+    from springlife.life.damage import Floats
+    from springlife.spring.helical import HelicalSpring
+
+MEASURES = {
+    # recorded quantity -> (slope, intercept) of deflection over it, from the spring and the installed deflection
+    "deflection": lambda spring, installed: (1.0, 0.0),
+    "travel": lambda spring, installed: (1.0, installed),
+    "length": lambda spring, installed: (-1.0, spring.free_length),
+    "force": lambda spring, installed: (1.0 / spring.rate, 0.0),
+}
+
+
+@dataclass
+class Beyond:
+    """How often, how long and how far a record goes beyond a deflection; fed block by block."""
+
+    sign: float  # +1 watches for deflections above the limit, -1 for those below
+    limit: float
+    sample_rate: float | None = None
+    total: int = 0
+    samples: int = 0
+    visits: int = 0
+    extent: float = 0.0
+    what: str = "samples"
+    _inside: bool = field(default=False, repr=False)
+
+    def feed(self, deflection: Floats) -> None:
+        """Take the next block of deflections in m."""
+        past = self.sign * (deflection - self.limit)
+        over = past > 0
+        self.total += int(np.count_nonzero(~np.isnan(deflection)))
+        if over.any():
+            self.samples += int(np.count_nonzero(over))
+            self.extent = max(self.extent, float(past[over].max()))
+            starts = over & ~np.concatenate([[self._inside], over[:-1]])
+            self.visits += int(np.count_nonzero(starts))
+        if over.size:
+            self._inside = bool(over[-1])
+
+    def feed_block(self, deflection: float, cycles: int) -> None:
+        """Take one end of a specified block, reached once a cycle."""
+        self.what = "cycles"
+        self.total += cycles
+        past = self.sign * (deflection - self.limit)
+        if past > 0:
+            self.samples += cycles
+            self.visits += cycles
+            self.extent = max(self.extent, past)
+
+    @property
+    def any(self) -> bool:
+        """Whether it happened at all."""
+        return self.samples > 0
+
+    @property
+    def share(self) -> float:
+        """Part of the samples beyond the limit."""
+        return self.samples / self.total if self.total else 0.0
+
+    def describe(self) -> str:
+        """Say how often and how long."""
+        times = "once" if self.visits == 1 else f"{self.visits} times"
+        duration = f", {self.samples / self.sample_rate:.3g} s" if self.sample_rate else ""
+        return f"{times}, {self.samples} of {self.total} {self.what}{duration}"
+
+
+@dataclass(frozen=True)
+class EventReading:
+    """One event, read and counted: the count is in the recorded quantity, SI."""
+
+    name: str
+    repeats: int
+    measures: str
+    installed: float
+    count: Count
+    off_seat: Beyond
+    past_solid: Beyond
+    path: Path | None = None
+    sha256: str | None = None
+    summary: RecordSummary | None = None
+    provenance: tuple[str, ...] = ()
+
+    @property
+    def recorded(self) -> bool:
+        """Whether the event comes from a record rather than a specified programme."""
+        return self.path is not None
+
+    def line(self, spring: HelicalSpring) -> tuple[float, float]:
+        """Return slope and intercept of deflection (m) over the recorded quantity."""
+        return MEASURES[self.measures](spring, self.installed)
+
+
+@dataclass(frozen=True)
+class Duty:
+    """All events of a pass, read once."""
+
+    events: tuple[EventReading, ...]
+
+    def one_pass(self, spring: HelicalSpring) -> Pass:
+        """Return the pass in deflection of this spring."""
+        if all(event.measures in ("deflection", "travel") for event in self.events):
+            return self._stroke_pass
+        return self._in_deflection(spring)
+
+    @cached_property
+    def _stroke_pass(self) -> Pass:
+        """The pass when nothing of the spring enters: deflections and travels are the same for all options."""
+        return self._in_deflection(None)
+
+    def _in_deflection(self, spring: HelicalSpring | None) -> Pass:
+        lines = [MEASURES[event.measures](spring, event.installed) for event in self.events]
+        return Pass(
+            tuple(
+                Event(event.name, event.count.mapped(*line), event.repeats)
+                for event, line in zip(self.events, lines, strict=True)
+            )
+        )
+
+    def extremes(self, spring: HelicalSpring) -> tuple[float, float]:
+        """Return the least and greatest deflection of the pass in m."""
+        total = self.one_pass(spring).total
+        return total.minimum, total.maximum
+
+
+def read_duty(case: Case, spring: HelicalSpring) -> Duty:
+    """Read and count every event of the case.
+
+    Raises
+    ------
+    FileError, InputError
+        From the record: what is wrong, where, and what would be right.
+    """
+    return Duty(tuple(_read_event(case, event, spring) for event in case.duty.event))
+
+
+def _read_event(case: Case, event: EventInput, spring: HelicalSpring) -> EventReading:
+    off, past = Beyond(-1.0, 0.0), Beyond(1.0, spring.solid_deflection)
+    if event.blocks is not None:
+        total = Count()
+        for block in event.blocks:
+            total = total + block.cycles * count([block.low, block.high])
+            off.feed_block(block.low, block.cycles)
+            past.feed_block(block.high, block.cycles)
+        return EventReading(event.name, event.repeats, "deflection", 0.0, total, off, past)
+    return _read_record(case, event, spring, off, past)
+
+
+def _read_record(
+    case: Case, event: EventInput, spring: HelicalSpring, off: Beyond, past: Beyond
+) -> EventReading:
+    from springlife.duty.record import RecordSpec, SummaryAccumulator, open_record
+
+    assert event.record is not None  # the case file has been checked
+    spec = RecordSpec(
+        path=case.beside(event.record),
+        channel=event.channel,
+        time=event.time,
+        time_unit=event.time_unit,
+        sample_rate=event.sample_rate,
+        unit=event.unit,
+        kind="force" if event.measures == "force" else "length",
+        scale=event.scale,
+        offset=event.offset,
+        invert=event.invert,
+        gaps=event.gaps,
+    )
+    recording = open_record(spec)
+    slope, intercept = MEASURES[event.measures](spring, event.installed_deflection or 0.0)
+    summary, total = SummaryAccumulator(), Count()
+    for block in recording.blocks():
+        summary.feed(block)
+        total = total + count(block, nan="split" if event.gaps == "split" else "error")
+        for watch in (off, past):
+            watch.feed(slope * block + intercept)
+    off.sample_rate = past.sample_rate = recording.sample_rate
+    return EventReading(
+        event.name, event.repeats, event.measures, event.installed_deflection or 0.0, total, off, past,
+        spec.path, recording.sha256, summary.result(), recording.provenance,
+    )  # fmt: skip
