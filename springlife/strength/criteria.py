@@ -63,7 +63,7 @@ class Criterion:
         tau_a, tau_m, Ssu, Ssy = _floats(tau_a, tau_m, Ssu, Ssy)
         left = self.fraction(np.maximum(tau_m, 0.0), Ssu, Ssy)
         with np.errstate(divide="ignore", invalid="ignore"):
-            return np.where(left > 0, tau_a / left, np.where(np.isnan(left), np.nan, np.inf))[()]
+            return np.where(left <= 0, np.inf, tau_a / left)[()]
 
     def reversed_strength(self, Ssa: ArrayLike, Ssm: ArrayLike, Ssu: ArrayLike, Ssy: ArrayLike) -> Any:
         """Return the fully reversed strength Sse on the criterion's own curve through (Ssm, Ssa), Pa.

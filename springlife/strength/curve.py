@@ -161,8 +161,8 @@ def two_point(Sse: float, Ssu: float, f: float | None = None, knee: float | None
         )
     if not 0 < Sse < f * Ssu:
         raise CriterionError(
-            f"fully reversed strength Sse = {METRIC(Sse, 'stress')} is not between 0 and f Ssu = {f:g} x "
-            f"{METRIC(Ssu, 'stress')} = {METRIC(f * Ssu, 'stress')}: no finite-life curve falls from there to Sse"
+            f"fully reversed strength Sse = {METRIC(Sse, 'stress')} is not between 0 and "
+            f"f Ssu = {f:g} x {METRIC(Ssu, 'stress')} = {METRIC(f * Ssu, 'stress')}: the curve would not fall"
         )
     return LifeCurve(
         points=((start, f * Ssu), (knee, Sse)),
@@ -305,7 +305,8 @@ class CurveFile:
         """
         if criterion.name != self.criterion:
             raise CriterionError(
-                f"{self.path}: its amplitudes are fully reversed by {self.criterion}; {criterion.name} has no value"
+                f"{self.path}: its amplitudes are made fully reversed by {self.criterion}, "
+                f"so {criterion.name} has no value; judge by {self.criterion}"
             )
         fitting = [group for group in self.groups if group.shot_peened in (None, shot_peened)]
         if len(fitting) != 1:
