@@ -26,6 +26,10 @@ class FileError(SpringlifeError, OSError):
         return str(self.args[0]) if self.args else ""
 
 
+class GapError(InputError):
+    """A record with missing samples, or with time that jumps or goes back."""
+
+
 class CriterionError(InputError):
     """A fatigue criterion that has no value for the strengths or stresses given."""
 

@@ -12,8 +12,7 @@ from typing import Any
 
 import numpy as np
 
-import springlife
-from springlife.errors import CriterionError, InputError
+from springlife.errors import CriterionError, GapError, InputError
 from springlife.life import findings as notice
 from springlife.life.case import Case, load_case
 from springlife.life.damage import DamageModel, Floats, greatest_factor
@@ -24,9 +23,9 @@ from springlife.duty.schedule import EventCycles
 from springlife.spring.grade import WireRangeError
 from springlife.spring.helical import GeometryError, HelicalSpring
 from springlife.spring.stress import StressMap, stress_map
-from springlife.strength import endurance
 from springlife.strength.criteria import CRITERIA, criterion, yield_factor
 from springlife.strength.curve import MINERS, endurance_curve
+from springlife.strength.endurance import BASES
 from springlife.units import UnitSystem, split, system_of
 
 
@@ -102,18 +101,23 @@ class Assessment:
         return say_of(self.case)
 
     @property
+    def target(self) -> tuple[float, str]:
+        """The life asked for: number and unit as the case says."""
+        return split(self.case.duty.target)
+
+    @property
     def life(self) -> tuple[float | None, str]:
         """Life in the target's own unit; None when unlimited or not judged."""
         passes = self.judgement.life_passes if self.judgement else None
-        number, unit = split(self.case.duty.target)
+        number, unit = self.target
         per_pass = number / self.case.duty.target_passes
         return (None if passes is None else passes * per_pass), unit
 
     def to_dict(self) -> dict[str, Any]:
         """Give everything for JSON; SI values under keys that name the unit."""
-        from springlife.life.record_of_result import as_dict
+        from springlife.life.result import as_dict
 
-        return as_dict(self, springlife.__version__)
+        return as_dict(self)
 
 
 def assess(case: Case | str | Path) -> Assessment:
@@ -162,9 +166,9 @@ def judge(case: Case, duty: Duty) -> Assessment:
     except CriterionError as error:
         return _withheld(case, [*seen, notice.found("strength-incoherent", str(error))], duty)
     judgement = _judgement(case, duty, spring, model)
-    seen += notice.of_curve(model, limits, assumed=case.judge.endurance in endurance.BASES)
+    seen += notice.of_curve(model, limits, assumed=case.judge.endurance in BASES)
     seen += notice.of_damage(model, judgement.cycles, judgement.cycle_damage, duty, limits, say)
-    seen += notice.of_life(judgement, case, say)
+    seen += notice.of_life(judgement, case)
     settled = notice.settle(seen, case.input.waive)
     if any(finding.blocks for finding in settled):
         verdict = "withheld"
@@ -194,8 +198,9 @@ def model_of(
     """
     judge_as = case.judge
     rule = criterion(by or judge_as.criterion)
+    basis = basis or judge_as.endurance
     curve = endurance_curve(
-        basis or judge_as.endurance,
+        basis if basis in BASES else case.beside(basis),
         rule,
         shot_peened=spring.shot_peened,
         family=spring.grade.cyclic_family,
@@ -340,7 +345,7 @@ def _factors(
 
 def _band(case: Case, spring: HelicalSpring, stress: StressMap, life: _Life) -> tuple[BandRow, ...]:
     """Judge the life under every criterion, endurance basis and Miner reading."""
-    bases = list(endurance.BASES)
+    bases = list(BASES)
     if case.judge.endurance not in bases:
         bases.insert(0, case.judge.endurance)
     rows = []

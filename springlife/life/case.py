@@ -12,11 +12,20 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Annotated, Any, Literal, get_args, get_origin
 
-from pydantic import BaseModel, BeforeValidator, ConfigDict, Field, ValidationError, model_validator
+from pydantic import (
+    BaseModel,
+    BeforeValidator,
+    ConfigDict,
+    Field,
+    ValidationError,
+    field_validator,
+    model_validator,
+)
 
 from springlife import units
 from springlife.errors import FileError, InputError, nearest
 from springlife.life.limits import LIMITS
+from springlife.strength.endurance import BASES
 
 FORMAT = 1
 LARGEST_CASE = 4_000_000  # bytes; a case file is written by hand
@@ -160,6 +169,13 @@ class JudgeInput(_Table):
     residue: Literal["repeat", "half", "drop"] = "repeat"
     strength_fraction: Share | None = None  # f of the two-point curve; None takes the data file's value
     knee: Annotated[float, Field(gt=1e4)] | None = None
+
+    @field_validator("endurance")
+    @classmethod
+    def _known(cls, endurance: str) -> str:
+        if endurance not in BASES and not endurance.endswith(".toml"):
+            raise ValueError(f"{endurance!r} is not known; {nearest(endurance, BASES)}, or a curve file (.toml)")
+        return endurance
 
 
 class WaiveInput(_Table):

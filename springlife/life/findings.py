@@ -18,7 +18,8 @@ from springlife.units import UnitSystem, convert, significant
 
 if TYPE_CHECKING:
     from springlife.duty.schedule import EventCycles
-    from springlife.life.case import SpringInput, WaiveInput
+    from springlife.life.assess import Judgement
+    from springlife.life.case import Case, SpringInput, WaiveInput
     from springlife.life.damage import DamageModel, Floats
     from springlife.life.reading import Duty
     from springlife.spring.helical import HelicalSpring
@@ -250,3 +251,45 @@ def _one_cycle(
             f"{say(float(cycles.high[largest]), 'length')}, carries {100 * share:.0f} % of the damage"
         )
         yield found("one-cycle-rules", message)
+
+
+def of_scope(spring: HelicalSpring, case: Case, say: UnitSystem) -> Iterator[Finding]:
+    """Yield a warning when Zimmerli's pair is used on a wire or in a place that it was not made for."""
+    from springlife.strength.endurance import zimmerli_scope
+
+    if case.judge.endurance != "zimmerli":
+        return
+    scope = zimmerli_scope()
+    outside = []
+    if spring.wire_diameter >= scope.wire_diameter_below:
+        outside.append(
+            f"wire of {say(spring.wire_diameter, 'length')} is not under {say(scope.wire_diameter_below, 'length', 3)}"
+        )
+    if not spring.grade.ferrous:
+        outside.append(f"{spring.grade.name} is not steel")
+    if spring.temperature > scope.temperature_up_to:
+        seen = say(spring.temperature, "temperature", 3)
+        outside.append(f"{seen} is above {say(scope.temperature_up_to, 'temperature', 3)}")
+    if case.spring.environment != scope.environment:
+        outside.append(f"the environment is {case.spring.environment}")
+    if outside:
+        yield found("endurance-scope", f"Zimmerli's data used outside their scope: {'; '.join(outside)}")
+
+
+def of_life(judgement: Judgement, case: Case) -> Iterator[Finding]:
+    """Yield a warning when the duty asks for more damaging cycles than the endurance data's basis."""
+    damage, cycles = judgement.cycle_damage, judgement.cycles
+    total = float(damage.sum())
+    if not 0 < total < np.inf:
+        return
+    order = np.argsort(damage)[::-1]
+    # The cycles that together do 99 % of the damage: the rest may be as many as it likes.
+    most = order[: int(np.searchsorted(np.cumsum(damage[order]), 0.99 * total)) + 1]
+    asked = float(cycles.count[most].sum()) * case.duty.target_passes
+    basis = judgement.model.curve.valid_to
+    if asked > basis:
+        message = (
+            f"the target asks for {significant(asked, 3)} damaging cycles; the endurance data's basis ends at "
+            f"{basis:g}, and strength is known to fall further beyond"
+        )
+        yield found("endurance-scope", message)
