@@ -23,14 +23,14 @@ class Table:
         """Refuse keys that are not among ``keys``."""
         for key in self.raw:
             if key not in keys:
-                raise InputError(f"{self.where}key {key!r} is not known; {nearest(key, keys)}")
+                raise InputError(f"{self.where}{key} is not a known key; {nearest(key, keys)}")
 
     def get(self, key: str, kind: type) -> Any:
         """Return a value that must be there and be of one kind."""
         names = {str: "text in quotes", bool: "true or false", int: "a whole number", float: "a number",
                  dict: "a table", list: "a list of tables"}  # fmt: skip
         if key not in self.raw:
-            raise InputError(f"{self.where}key {key!r} is missing; add it as {names[kind]}")
+            raise InputError(f"{self.where}{key} is missing; add it as {names[kind]}")
         value = self.raw[key]
         wanted: Iterable[type] = (int, float) if kind is float else (kind,)
         if type(value) not in wanted:
