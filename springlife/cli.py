@@ -64,6 +64,7 @@ def _parser() -> argparse.ArgumentParser:
     commands = parser.add_subparsers(title="commands", metavar="COMMAND", parser_class=_Parser)
     _case_command(commands, "assess", _assess, "judge a case: life, damage, margin, findings")
     _case_command(commands, "check", _check, "read everything a case names, judge nothing")
+    _compare_command(commands)
     _count_command(commands)
     grades = commands.add_parser("grades", help="list the wire grades with their strengths", epilog=CAUTION)
     grades.add_argument("grade", nargs="?", help="one grade in full")
@@ -72,15 +73,26 @@ def _parser() -> argparse.ArgumentParser:
     return parser
 
 
-def _case_command(commands: Any, name: str, run: Callable[[argparse.Namespace], int], text: str) -> None:
+def _case_command(commands: Any, name: str, run: Callable[[argparse.Namespace], int], text: str) -> Any:
     parser = commands.add_parser(name, help=text, description=text[0].upper() + text[1:] + ".", epilog=CAUTION)
     parser.add_argument("case", metavar="CASE", type=Path, help="the case file (TOML)")
     _finish(parser, run)
+    return parser
 
 
 def _finish(parser: argparse.ArgumentParser, run: Callable[[argparse.Namespace], int]) -> None:
     parser.add_argument("--json", action="store_true", help="print one JSON object")
     parser.set_defaults(run=run)
+
+
+def _compare_command(commands: Any) -> None:
+    parser = _case_command(commands, "compare", _compare, "judge a case's options side by side, peened or not first")
+    parser.add_argument(
+        "--hold",
+        choices=("stroke", "force", "length", "rate"),
+        default="stroke",
+        help="what stays as of the drawn spring (default: stroke)",
+    )
 
 
 def _count_command(commands: Any) -> None:
@@ -130,6 +142,19 @@ def _check(arguments: argparse.Namespace) -> int:
 
         print_check(result)
     return 3 if result.stopped else 0
+
+
+def _compare(arguments: argparse.Namespace) -> int:
+    from springlife.life.compare import compare
+
+    result = compare(arguments.case, arguments.hold)
+    if arguments.json:
+        _print_json(result.to_dict())
+    else:
+        from springlife.report.compare_text import print_comparison
+
+        print_comparison(result, CAUTION)
+    return EXIT[result.options[0].assessment.verdict]
 
 
 def _number_or_name(text: str | None) -> str | int | None:

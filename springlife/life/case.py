@@ -8,7 +8,9 @@ from __future__ import annotations
 
 import hashlib
 import tomllib
+from collections.abc import Iterator
 from dataclasses import dataclass
+from itertools import product
 from pathlib import Path
 from typing import Annotated, Any, Literal, get_args, get_origin
 
@@ -80,6 +82,7 @@ class SpringInput(_Table):
 
 
 DIAMETERS = ("mean_diameter", "outer_diameter", "inner_diameter")
+RATE_MAKERS = {"grade", "grade_file", "wire_diameter", "total_coils", "ends", "shear_modulus", *DIAMETERS}
 
 
 class BlockInput(_Table):
@@ -261,26 +264,47 @@ class Case:
         return self.path.parent / name
 
     def varied(self, name: str, spring: dict[str, Any], judge: dict[str, Any], where: str) -> Case:
-        """Return the case with overrides merged in; a diameter given replaces the one of the case.
+        """Return the case with overrides merged in.
+
+        A diameter given replaces the one of the case; a measured rate or tensile strength of the case goes
+        when what it was measured on changes.
 
         Raises
         ------
         InputError
             When an override names an unknown key or gives a value that the table refuses.
         """
-        base = dict(self.raw["spring"])
+        gone: set[str] = set()
         if set(DIAMETERS) & set(spring):
-            base = {key: value for key, value in base.items() if key not in DIAMETERS}
+            gone |= set(DIAMETERS)
+        # A rate or strength measured on the drawn spring says nothing about another one.
+        if set(spring) & RATE_MAKERS:
+            gone.add("measured_rate")
+        if set(spring) & {"grade", "grade_file", "wire_diameter"}:
+            gone.add("tensile_strength")
+        base = {key: value for key, value in self.raw["spring"].items() if key not in gone}
         raw = dict(self.raw, spring=base | spring, judge=dict(self.raw.get("judge", {})) | judge)
         merged = _checked(raw, self.path, where, only=("spring", "judge"))
         return Case(self.path, self.sha256, raw, merged, name)
 
     def options(self) -> tuple[Case, ...]:
-        """Return each [[option]] merged into the case, in the order of the file."""
+        """Return each [[option]] merged into the case, in the order of the file; a grid gives one case a node."""
         return tuple(
-            self.varied(option.name, option.spring, option.judge, f"option[{number}].")
+            self.varied(name, spring, option.judge, f"option[{number}].")
             for number, option in enumerate(self.input.option, start=1)
+            for name, spring in _grid(option)
         )
+
+
+def _grid(option: OptionInput) -> Iterator[tuple[str, dict[str, Any]]]:
+    """Yield every combination of the lists in an option's [spring] overrides, named by what varies."""
+    lists = {key: value for key, value in option.spring.items() if isinstance(value, list)}
+    if not lists:
+        yield option.name, option.spring
+        return
+    for values in product(*lists.values()):
+        chosen = dict(zip(lists, values, strict=True))
+        yield f"{option.name}: {', '.join(str(value) for value in values)}", option.spring | chosen
 
 
 def load_case(path: str | Path) -> Case:

@@ -154,7 +154,11 @@ def _solid(
     duty: Duty, high: float, solid: float, limits: Mapping[str, float], say: UnitSystem
 ) -> Iterator[Finding]:
     if high > solid:
-        past = [f"{event.name!r} {event.past_solid.describe()}" for event in duty.events if event.past_solid.any]
+        past = [
+            f"{event.name!r} {event.past_solid.describe()}"
+            for event in duty.events
+            if event.past_solid.any and event.past_solid.limit == solid
+        ]
         where = f" ({'; '.join(past)})" if past else ""
         message = (
             f"greatest deflection {say(high, 'length')} passes solid at {say(solid, 'length')} "

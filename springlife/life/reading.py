@@ -6,7 +6,7 @@ deflection, so that a change of free length or rate never touches the record aga
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 from pathlib import Path
 from typing import TYPE_CHECKING
@@ -19,7 +19,7 @@ from springlife.duty.schedule import Event, Pass
 if TYPE_CHECKING:
     from springlife.duty.record import RecordSummary
     from springlife.life.case import Case, EventInput
-    from springlife.life.damage import Floats
+    from springlife.duty.schedule import Floats
     from springlife.spring.helical import HelicalSpring
 
 MEASURES = {
@@ -58,15 +58,15 @@ class Beyond:
         if over.size:
             self._inside = bool(over[-1])
 
-    def feed_block(self, deflection: float, cycles: int) -> None:
-        """Take one end of a specified block, reached once a cycle."""
+    def feed_cycles(self, ends: Floats, cycles: Floats) -> None:
+        """Take one end of counted cycles, m, and how many there are of each; shapes (n,)."""
         self.what = "cycles"
-        self.total += cycles
-        past = self.sign * (deflection - self.limit)
-        if past > 0:
-            self.samples += cycles
-            self.visits += cycles
-            self.extent = max(self.extent, past)
+        past = self.sign * (ends - self.limit)
+        over = past > 0
+        self.total += int(cycles.sum())
+        self.samples += int(cycles[over].sum())
+        self.visits = self.samples
+        self.extent = max(self.extent, float(past[over].max(initial=0.0)))
 
     @property
     def any(self) -> bool:
@@ -137,6 +137,27 @@ class Duty:
             )
         )
 
+    def pinned(self, spring: HelicalSpring) -> Duty:
+        """Return the duty as deflections of this spring, whatever was recorded."""
+        return Duty(
+            tuple(
+                replace(event, measures="deflection", installed=0.0, count=event.count.mapped(*event.line(spring)))
+                for event in self.events
+            )
+        )
+
+    def mapped(self, slope: float, intercept: float) -> Duty:
+        """Return a pinned duty with every deflection y made ``slope * y + intercept``; nothing is read again."""
+        events = []
+        for event in self.events:
+            moved = event.count.mapped(slope, intercept)
+            cycles = moved.table("repeat")
+            off, past = Beyond(-1.0, 0.0), Beyond(1.0, event.past_solid.limit)
+            off.feed_cycles(cycles.low, cycles.count)
+            past.feed_cycles(cycles.high, cycles.count)
+            events.append(replace(event, count=moved, off_seat=off, past_solid=past))
+        return Duty(tuple(events))
+
     def extremes(self, spring: HelicalSpring) -> tuple[float, float]:
         """Return the least and greatest deflection of the pass in m."""
         total = self.one_pass(spring).total
@@ -160,8 +181,9 @@ def _read_event(case: Case, event: EventInput, spring: HelicalSpring) -> EventRe
         total = Count()
         for block in event.blocks:
             total = total + block.cycles * count([block.low, block.high])
-            off.feed_block(block.low, block.cycles)
-            past.feed_block(block.high, block.cycles)
+            cycles = np.array([float(block.cycles)])
+            off.feed_cycles(np.array([block.low]), cycles)
+            past.feed_cycles(np.array([block.high]), cycles)
         return EventReading(event.name, event.repeats, "deflection", 0.0, total, off, past)
     return _read_record(case, event, spring, off, past)
 

@@ -31,14 +31,15 @@ LEVEL_STYLE = {"stop": "bold red", "warn": "yellow", "note": ""}
 PIPED_WIDTH = 100
 
 
-def _console() -> Console:
+def console_for_output() -> Console:
+    """Make a console: the terminal's width, or a page's when piped; no colour then, and none with NO_COLOR."""
     from rich.console import Console
 
     piped = not sys.stdout.isatty() and "COLUMNS" not in os.environ
     return Console(highlight=False, markup=False, emoji=False, width=PIPED_WIDTH if piped else None)
 
 
-def _rows(console: Console, rows: Iterable[tuple[str, str]], style: str = "bold") -> None:
+def print_rows(console: Console, rows: Iterable[tuple[str, str]], style: str = "bold") -> None:
     """Print label and text in two columns; the text wraps under itself."""
     from rich.table import Table
     from rich.text import Text
@@ -51,7 +52,7 @@ def _rows(console: Console, rows: Iterable[tuple[str, str]], style: str = "bold"
     console.print(table)
 
 
-def _table(console: Console, title: str, heads: Sequence[str], rows: Iterable[Sequence[str]], left: int = 1) -> None:
+def print_table(console: Console, title: str, heads: Sequence[str], rows: Iterable[Sequence[str]], left: int = 1) -> None:
     """Print a plain table: the first ``left`` columns flush left, numbers flush right."""
     from rich.table import Table
     from rich.text import Text
@@ -70,15 +71,15 @@ def print_assessment(result: Assessment, caution: str) -> None:
     """Print a judged case."""
     from rich.text import Text
 
-    console = _console()
+    console = console_for_output()
     text, style = VERDICTS[result.verdict]
     console.print(Text(text, style=style))
     given = result.case.input
     console.print(Text(" · ".join(part for part in (given.title, given.part, given.revision) if part)))
     console.print()
     if result.judgement:
-        _rows(console, _summary(result, result.judgement))
-    _print_findings(console, result.findings)
+        print_rows(console, _summary(result, result.judgement))
+    print_findings(console, result.findings)
     if result.judgement:
         _print_events(console, result.judgement)
         _print_factors(console, result.judgement)
@@ -140,7 +141,8 @@ def _governing(result: Assessment, j: Judgement) -> str:
     return f"{head}worst cycle {place}{between}: {stresses}, {life}"
 
 
-def _print_findings(console: Console, findings: Sequence[Finding]) -> None:
+def print_findings(console: Console, findings: Sequence[Finding]) -> None:
+    """Print findings, stops first, each with what to do."""
     from rich.text import Text
 
     if not findings:
@@ -162,7 +164,7 @@ def _print_events(console: Console, j: Judgement) -> None:
         (e.name, str(e.repeats), significant(e.cycles), significant(e.damage, 3), f"{100 * e.share:.1f} %")
         for e in j.events
     ]
-    _table(console, "One pass", ("event", "repeats", "cycles", "damage", "share"), rows)
+    print_table(console, "One pass", ("event", "repeats", "cycles", "damage", "share"), rows)
 
 
 def _print_factors(console: Console, j: Judgement) -> None:
@@ -177,7 +179,7 @@ def _print_factors(console: Console, j: Judgement) -> None:
         for name, value in j.safety_factors.items()
     ]
     heads = ("criterion", "proportional", "preload held")
-    _table(console, "Safety factors of the constant-amplitude duty", heads, rows)
+    print_table(console, "Safety factors of the constant-amplitude duty", heads, rows)
 
 
 def _print_band(console: Console, result: Assessment) -> None:
@@ -194,10 +196,10 @@ def _print_band(console: Console, result: Assessment) -> None:
         if not all(cell.withheld for cell in cells.values())
     ]
     title = "Life under every published choice"
-    _table(console, title, ("endurance", "Miner", *criteria), rows, left=2)
+    print_table(console, title, ("endurance", "Miner", *criteria), rows, left=2)
     reasons = dict.fromkeys(row.withheld for row in band if row.withheld)
     if reasons:
-        _rows(console, [("withheld", reason or "") for reason in reasons], style="dim")
+        print_rows(console, [("withheld", reason or "") for reason in reasons], style="dim")
 
 
 def _band_cell(result: Assessment, row: BandRow) -> str:
@@ -208,19 +210,19 @@ def print_check(result: CheckResult) -> None:
     """Print what a case names, read but not judged."""
     from rich.text import Text
 
-    console = _console()
+    console = console_for_output()
     console.print(Text(result.title, style="bold"))
     for heading, rows in result.sections:
         console.print()
         console.print(Text(heading, style="bold"))
-        _rows(console, rows, style="")
-    _print_findings(console, result.findings)
+        print_rows(console, rows, style="")
+    print_findings(console, result.findings)
 
 
 def print_tally(result: Tally, top: int) -> None:
     """Print a counted record: the largest ranges first."""
-    console = _console()
-    _rows(console, result.lines())
+    console = console_for_output()
+    print_rows(console, result.lines())
     table = result.table
     shown = len(table) if top == 0 else min(top, len(table))
     heads = tuple(f"{name} {result.unit}".strip() for name in ("range", "mean", "low", "high"))
@@ -228,12 +230,12 @@ def print_tally(result: Tally, top: int) -> None:
         (*(significant(float(row[key]), 5) for key in ("range", "mean", "low", "high")), f"{row['count']:g}")
         for row in table[:shown]
     ]
-    _table(console, f"Cycles, largest first ({shown} of {len(table)} rows)", (*heads, "count"), rows, left=0)
+    print_table(console, f"Cycles, largest first ({shown} of {len(table)} rows)", (*heads, "count"), rows, left=0)
 
 
 def print_grades(grades: Sequence[Grade], *, full: bool) -> None:
     """Print wire grades as a table, or one of them in full."""
-    console = _console()
+    console = console_for_output()
     rows = []
     for entry in grades:
         low, high = entry.diameter_range
@@ -248,7 +250,7 @@ def print_grades(grades: Sequence[Grade], *, full: bool) -> None:
             )
         )
     heads = ("grade", "wire", "diameter mm", "Sut MPa", "to degC")
-    _table(console, "Wire grades", heads, rows, left=2)
+    print_table(console, "Wire grades", heads, rows, left=2)
     if full:
         for entry in grades:
-            _rows(console, [("", line) for line in entry.describe()])
+            print_rows(console, [("", line) for line in entry.describe()])
