@@ -190,7 +190,7 @@ def test_zimmerli_at_or_above_f_Ssu_names_the_criterion() -> None:
 
 def test_settings_reach_the_curve() -> None:
     curve = endurance_curve("zimmerli", criterion("gerber"), **WIRE, f=0.8, knee=2e6)
-    assert curve.knee == 2e6 and curve.points[0] == (1e3, pytest.approx(0.8 * WIRE["Ssu"]))
+    assert curve.knee == 2e6 and curve.points[0] == pytest.approx((1e3, 0.8 * WIRE["Ssu"]))
 
 
 def test_an_unknown_basis_lists_the_known_ones() -> None:
@@ -262,7 +262,7 @@ def test_a_curve_file_is_an_endurance_basis(tmp_path: Path) -> None:
     assert peened.strength_at_knee == pytest.approx(400 * MPa * 10**-0.1)
     unpeened = endurance_curve(path, criterion("gerber"), **WIRE)
     assert unpeened.points[0] == (1e4, 500 * MPa)
-    assert unpeened.points[1] == (1e6, pytest.approx(50 * 6894757.293168361))
+    assert unpeened.points[1] == pytest.approx((1e6, 50 * 6894757.293168361))
     assert (unpeened.valid_from, unpeened.valid_to) == (1e4, 1e6)
     assert unpeened.sources == ("own tests",)
     read = read_curve(path)

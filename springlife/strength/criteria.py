@@ -4,14 +4,13 @@ Each criterion is two laws: the share of the fully reversed strength that is lef
 factor along a load line. Adding one is these two functions and one line in :data:`CRITERIA`.
 
 All functions take scalars, arrays that broadcast, or Series (read by position), in any one unit of stress,
-and return a float or an array. Means at or below zero take nothing away.
+and return an array, or for scalars a NumPy float. Means at or below zero take nothing away.
 """
 
 from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -36,7 +35,7 @@ class Criterion:
     fraction: Callable[[Floats, Floats, Floats], Floats]
     load_line: Callable[[Floats, Floats, Floats], Floats]
 
-    def equivalent(self, tau_a: ArrayLike, tau_m: ArrayLike, Ssu: ArrayLike, Ssy: ArrayLike) -> Any:
+    def equivalent(self, tau_a: ArrayLike, tau_m: ArrayLike, Ssu: ArrayLike, Ssy: ArrayLike) -> Floats:
         """Return the fully reversed amplitude that harms as much as ``tau_a`` at the mean ``tau_m``.
 
         Parameters
@@ -65,7 +64,7 @@ class Criterion:
         with np.errstate(divide="ignore", invalid="ignore"):
             return np.where(left <= 0, np.inf, tau_a / left)[()]
 
-    def reversed_strength(self, Ssa: ArrayLike, Ssm: ArrayLike, Ssu: ArrayLike, Ssy: ArrayLike) -> Any:
+    def reversed_strength(self, Ssa: ArrayLike, Ssm: ArrayLike, Ssu: ArrayLike, Ssy: ArrayLike) -> Floats:
         """Return the fully reversed strength Sse on the criterion's own curve through (Ssm, Ssa), Pa.
 
         Raises
@@ -78,14 +77,14 @@ class Criterion:
             raise CriterionError(self._no_strength(Ssm, Ssu, Ssy))
         return Sse
 
-    def allowable(self, tau_m: ArrayLike, Sse: ArrayLike, Ssu: ArrayLike, Ssy: ArrayLike) -> Any:
+    def allowable(self, tau_m: ArrayLike, Sse: ArrayLike, Ssu: ArrayLike, Ssy: ArrayLike) -> Floats:
         """Return the allowable amplitude at a mean stress, Pa: the Haigh line, never below 0."""
         tau_m, Sse, Ssu, Ssy = _floats(tau_m, Sse, Ssu, Ssy)
-        return (Sse * np.maximum(self.fraction(np.maximum(tau_m, 0.0), Ssu, Ssy), 0.0))[()]
+        return Sse * np.maximum(self.fraction(np.maximum(tau_m, 0.0), Ssu, Ssy), 0.0)
 
     def safety_factor(
         self, tau_a: ArrayLike, tau_m: ArrayLike, Sse: ArrayLike, Ssu: ArrayLike, Ssy: ArrayLike
-    ) -> Any:
+    ) -> Floats:
         """Return the factor on both stresses at which the allowable line is reached: r = tau_a/tau_m held.
 
         Notes
@@ -107,7 +106,7 @@ class Criterion:
         Sse: ArrayLike,
         Ssu: ArrayLike,
         Ssy: ArrayLike,
-    ) -> Any:
+    ) -> Floats:
         """Return the factor on what comes on top of a preload stress ``tau_i``, which stays as it is.
 
         The load line starts at (tau_i, 0) in the Haigh diagram: n is the factor at which the amplitude
@@ -203,7 +202,7 @@ def criterion(name: str) -> Criterion:
     return CRITERIA[name]
 
 
-def yield_factor(tau_a: ArrayLike, tau_m: ArrayLike, Ssy: ArrayLike) -> Any:
+def yield_factor(tau_a: ArrayLike, tau_m: ArrayLike, Ssy: ArrayLike) -> Floats:
     """Return the factor against yield (Langer), n = Ssy/(tau_a + tau_m); infinite without stress.
 
     References
@@ -212,4 +211,4 @@ def yield_factor(tau_a: ArrayLike, tau_m: ArrayLike, Ssy: ArrayLike) -> Any:
     """
     tau_a, tau_m, Ssy = _floats(tau_a, tau_m, Ssy)
     with np.errstate(divide="ignore"):
-        return np.divide(Ssy, tau_a + tau_m)[()]
+        return np.divide(Ssy, tau_a + tau_m)

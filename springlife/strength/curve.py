@@ -12,20 +12,19 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from itertools import pairwise
 from pathlib import Path
-from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike
 
 from springlife.errors import CriterionError, FileError, InputError, nearest
-from springlife.strength.criteria import CRITERIA, Criterion
+from springlife.strength.criteria import CRITERIA, Criterion, Floats
 from springlife.strength.endurance import BASES, Fractions, data, handbook, zimmerli
 from springlife.strength.table import Table
 from springlife.units import METRIC
 
 Miner = str  # a key of MINERS
 # Slope past the knee from the slope k before it: what a cycle under the knee still does.
-MINERS: dict[str, Callable[[Any], Any]] = {
+MINERS: dict[str, Callable[[Floats], Floats]] = {
     "original": lambda k: k * np.inf,
     "elementary": lambda k: k,
     "haibach": lambda k: 2 * k - 1,
@@ -35,7 +34,7 @@ FORMAT = 1
 
 def cycles_to_failure(
     tau_ar: ArrayLike, lives: Sequence[float], strengths: Sequence[ArrayLike], miner: Miner = "haibach"
-) -> Any:
+) -> Floats:
     """Return the cycles to failure at fully reversed amplitudes, on a curve through points.
 
     Parameters
@@ -69,14 +68,14 @@ def cycles_to_failure(
         raise InputError(f"miner {miner!r} is not known; {nearest(miner, MINERS)}")
     y = [np.log(life) for life in lives]
     S = [np.log(np.asarray(strength, dtype=np.float64)) for strength in strengths]
-    k = [(y[i + 1] - y[i]) / (S[i] - S[i + 1]) for i in range(len(y) - 1)]
+    k: list[Floats] = [(y[i + 1] - y[i]) / (S[i] - S[i + 1]) for i in range(len(y) - 1)]
     k.append(MINERS[miner](k[-1]))
     with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
         x = np.log(np.asarray(tau_ar, dtype=np.float64))
         log_N = y[0] - k[0] * (x - S[0])
         for i in range(1, len(y)):
             log_N = np.where(x < S[i], y[i] - k[i] * (x - S[i]), log_N)
-        return np.exp(log_N)[()]
+        return np.exp(log_N)
 
 
 @dataclass(frozen=True)
@@ -119,7 +118,7 @@ class LifeCurve:
         (N1, S1), (N2, S2) = self.points[-2:]
         return float(np.log(N2 / N1) / np.log(S1 / S2))
 
-    def cycles(self, tau_ar: ArrayLike, miner: Miner = "haibach") -> Any:
+    def cycles(self, tau_ar: ArrayLike, miner: Miner = "haibach") -> Floats:
         """Return the cycles to failure of each amplitude: see :func:`cycles_to_failure`."""
         lives, strengths = zip(*self.points, strict=True)
         return cycles_to_failure(tau_ar, lives, strengths, miner)
