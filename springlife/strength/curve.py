@@ -72,7 +72,7 @@ def cycles_to_failure(
     k.append(MINERS[miner](k[-1]))
     with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
         x = np.log(np.asarray(tau_ar, dtype=np.float64))
-        log_N = y[0] - k[0] * (x - S[0])
+        log_N: Floats = y[0] - k[0] * (x - S[0])
         for i in range(1, len(y)):
             log_N = np.where(x < S[i], y[i] - k[i] * (x - S[i]), log_N)
         return np.exp(log_N)
