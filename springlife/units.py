@@ -61,8 +61,9 @@ def _unit(text: str) -> Any:
     for sign, word in _SPELLING.items():
         spelled = spelled.replace(sign, word)
     spelled = re.sub(r"(?<=[A-Za-zµ])\^?(-?[1-4])", r"**\1", spelled)
+    registry = _registry()
     try:
-        return _registry().Unit(spelled)
+        return registry.Unit(spelled)
     except Exception as error:  # Pint raises a family of its own, plus tokenizer errors
         raise InputError(f"unit {text!r} is not known; write one such as 'mm', 'N/mm', 'MPa' or 'lbf/in'") from error
 

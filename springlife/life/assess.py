@@ -113,6 +113,19 @@ class Assessment:
         per_pass = number / self.case.duty.target_passes
         return (None if passes is None else passes * per_pass), unit
 
+    @property
+    def sources(self) -> tuple[str, ...]:
+        """Where the numbers come from: wire, endurance data, life curve."""
+        return (*self.judgement.spring.grade.sources, *self.judgement.model.curve.sources) if self.judgement else ()
+
+    @property
+    def inputs(self) -> tuple[tuple[str, str], ...]:
+        """Name and SHA-256 of the case file and of every record."""
+        records = () if self.duty is None else self.duty.events
+        return ((self.case.path.name, self.case.sha256),) + tuple(
+            (str(event.record), event.sha256) for event in records if event.record is not None and event.sha256
+        )
+
     def to_dict(self) -> dict[str, Any]:
         """Give everything for JSON; SI values under keys that name the unit."""
         from springlife.life.result import as_dict
@@ -142,7 +155,7 @@ def assess(case: Case | str | Path) -> Assessment:
 def part_of(case: Case) -> tuple[HelicalSpring | None, list[Finding]]:
     """Build the spring; when it cannot exist or its wire is off the table, return the stop instead."""
     try:
-        return case.spring.build(case.path), []
+        return case.build_spring(), []
     except GeometryError as error:
         return None, [notice.found("impossible-geometry", str(error))]
     except WireRangeError as error:

@@ -12,7 +12,7 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 from itertools import product
 from pathlib import Path
-from typing import Annotated, Any, Literal, get_args, get_origin
+from typing import TYPE_CHECKING, Annotated, Any, Literal, get_args, get_origin
 
 from pydantic import (
     BaseModel,
@@ -28,6 +28,9 @@ from springlife import units
 from springlife.errors import FileError, InputError, nearest
 from springlife.life.limits import LIMITS
 from springlife.strength.endurance import BASES
+
+if TYPE_CHECKING:
+    from springlife.spring.helical import HelicalSpring
 
 FORMAT = 1
 LARGEST_CASE = 4_000_000  # bytes; a case file is written by hand
@@ -81,6 +84,8 @@ class SpringInput(_Table):
         return self
 
 
+# What the part itself does not hold: where it works and how it was finished.
+_AROUND_THE_PART = {"grade", "grade_file", "finish", "baked", "environment"}
 DIAMETERS = ("mean_diameter", "outer_diameter", "inner_diameter")
 RATE_MAKERS = {"grade", "grade_file", "wire_diameter", "total_coils", "ends", "shear_modulus", *DIAMETERS}
 
@@ -253,6 +258,22 @@ class Case:
     def duty(self) -> DutyInput:
         """The [duty] table."""
         return self.input.duty
+
+    def build_spring(self) -> HelicalSpring:
+        """Build the part.
+
+        Raises
+        ------
+        InputError
+            Unknown grade, a bad grades file, wire off the table, or a geometry that cannot exist.
+        """
+        from springlife.spring.grade import grade
+        from springlife.spring.helical import HelicalSpring
+
+        given = self.spring
+        file = None if given.grade_file is None else self.beside(given.grade_file)
+        part = {key: value for key, value in given if key not in _AROUND_THE_PART}
+        return HelicalSpring(grade=grade(given.grade, file), **part)
 
     @property
     def judge(self) -> JudgeInput:

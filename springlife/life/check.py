@@ -60,7 +60,7 @@ class CheckResult:
                 {
                     "name": event.name,
                     "repeats": event.repeats,
-                    "path": event.path.name if event.path else None,
+                    "path": event.record,
                     "sha256": event.sha256,
                     "cycles": float(event.count.table("half").count.sum()),
                     "record": event.summary.to_dict() if event.summary else None,
@@ -126,8 +126,8 @@ def _event_rows(event: EventReading, say: UnitSystem) -> Rows:
         ("cycles", f"{significant(float(c.table('half').count.sum()), 6)} counted, residue of {c.residue.size} points"),
         ("extremes", f"{say(c.minimum, kind)} to {say(c.maximum, kind)} {event.measures}"),
     ]
-    if event.path is not None:
-        rows.insert(0, ("record", f"{event.path.name}, sha256 {(event.sha256 or '')[:16]}…"))
+    if event.record is not None:
+        rows.insert(0, ("record", f"{event.record}, sha256 {(event.sha256 or '')[:16]}…"))
     if event.summary is not None:
         rows += event.summary.lines()
     return rows + [("read", line) for line in event.provenance]

@@ -8,7 +8,6 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field, replace
 from functools import cached_property
-from pathlib import Path
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -96,7 +95,7 @@ class EventReading:
     count: Count
     off_seat: Beyond
     past_solid: Beyond
-    path: Path | None = None
+    record: str | None = None  # as the case file names it
     sha256: str | None = None
     summary: RecordSummary | None = None
     provenance: tuple[str, ...] = ()
@@ -104,7 +103,7 @@ class EventReading:
     @property
     def recorded(self) -> bool:
         """Whether the event comes from a record rather than a specified programme."""
-        return self.path is not None
+        return self.record is not None
 
     def line(self, spring: HelicalSpring) -> tuple[float, float]:
         """Return slope and intercept of deflection (m) over the recorded quantity."""
@@ -218,5 +217,5 @@ def _read_record(
     off.sample_rate = past.sample_rate = recording.sample_rate
     return EventReading(
         event.name, event.repeats, event.measures, event.installed_deflection or 0.0, total, off, past,
-        spec.path, recording.sha256, summary.result(), recording.provenance,
+        event.record, recording.sha256, summary.result(), recording.provenance,
     )  # fmt: skip

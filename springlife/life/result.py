@@ -33,7 +33,7 @@ def as_dict(assessment: Assessment) -> dict[str, Any]:
         "limits_changed": dict(case.input.limits),
         "findings": [finding.to_dict() for finding in assessment.findings],
         "records": _records(assessment),
-        "sources": [source.to_dict() for source in assessment.sources],
+        "sources": list(assessment.sources),
         "inputs": [{"path": name, "sha256": digest} for name, digest in assessment.inputs],
     }
     return data
@@ -130,13 +130,13 @@ def _records(assessment: Assessment) -> list[dict[str, Any]]:
     return [
         {
             "event": event.name,
-            "path": event.path.name,
+            "path": event.record,
             "sha256": event.sha256,
             "summary": event.summary.to_dict() if event.summary else None,
             "provenance": list(event.provenance),
         }
         for event in assessment.duty.events
-        if event.path is not None
+        if event.record is not None
     ]
 
 

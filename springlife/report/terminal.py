@@ -29,6 +29,7 @@ VERDICTS = {
 }
 LEVEL_STYLE = {"stop": "bold red", "warn": "yellow", "note": ""}
 PIPED_WIDTH = 100
+BEYOND = 1e7  # targets: a longer life is a number without meaning
 
 
 def console_for_output() -> Console:
@@ -89,9 +90,11 @@ def print_assessment(result: Assessment, caution: str) -> None:
 
 
 def quantity_of_life(result: Assessment, passes: float | None) -> str:
-    """Write a number of passes in the target's own unit."""
+    """Write a number of passes in the target's own unit; digits end where the methods have none."""
     if passes is None:
         return "unlimited"
+    if passes > BEYOND * result.case.duty.target_passes:
+        return f"over {significant(BEYOND)} targets"
     number, unit = result.target
     return f"{significant(passes * number / result.case.duty.target_passes, 3)} {unit}"
 
@@ -143,20 +146,24 @@ def _governing(result: Assessment, j: Judgement) -> str:
 
 def print_findings(console: Console, findings: Sequence[Finding]) -> None:
     """Print findings, stops first, each with what to do."""
+    from rich.table import Table
     from rich.text import Text
 
     if not findings:
         return
+    table = Table.grid(padding=(0, 2))
+    table.add_column(no_wrap=True)
+    table.add_column(ratio=1)
+    for finding in findings:
+        text = Text(f"{finding.code}: ", style="bold").append(finding.message, style="not bold")
+        if finding.waived_by is not None:
+            text.append(f" [waived by {finding.waived_by}: {finding.reason}]", style="not bold")
+        elif finding.level != "note":
+            text.append(f"; {finding.remedy}", style="not bold")
+        table.add_row(Text(finding.level, style=LEVEL_STYLE[finding.level]), text)
     console.print()
     console.print(Text("Findings", style="bold"))
-    for finding in findings:
-        line = Text(f"  {finding.level:<5}", style=LEVEL_STYLE[finding.level])
-        line.append(f"{finding.code}: ", style="bold").append(finding.message, style="not bold default")
-        if finding.waived_by is not None:
-            line.append(f" [waived by {finding.waived_by}: {finding.reason}]", style="not bold default")
-        elif finding.level != "note":
-            line.append(f"; {finding.remedy}", style="not bold default")
-        console.print(line)
+    console.print(table)
 
 
 def _print_events(console: Console, j: Judgement) -> None:
