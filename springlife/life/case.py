@@ -27,6 +27,7 @@ from pydantic import (
 from springlife import units
 from springlife.errors import FileError, InputError, nearest
 from springlife.life.limits import LIMITS
+from springlife.life.scatter_input import ScatterInput
 from springlife.strength.endurance import BASES
 
 if TYPE_CHECKING:
@@ -223,6 +224,7 @@ class CaseInput(_Table):
     duty: DutyInput
     judge: JudgeInput = JudgeInput()
     limits: dict[str, float] = {}
+    scatter: ScatterInput = ScatterInput()
     option: list[OptionInput] = []
     waive: list[WaiveInput] = []
 
