@@ -38,7 +38,7 @@ BAD_CASES: dict[str, tuple[str, str, list[str]]] = {
     "coils nan": ("total_coils = 12", "total_coils = nan", ["spring.total_coils", "nan", "finite"]),
     "boolean as text": ("[duty]", 'shot_peened = "yes"\n[duty]', ["spring.shot_peened", "'yes'", "boolean"]),
     "unknown grade": ('"A228"', '"A999"', ["A999", "A228", "grade"]),
-    "grades file missing": ('grade = "A228"', 'grade = "A228"\ngrade_file = "mine.toml"', ["mine.toml", "no such file"]),
+    "grades file missing": ('grade = "A228"', 'grade = "A228"\ngrade_file = "mine.toml"', ["mine.toml", "o such file"]),
     "unknown ends": ('"squared and ground"', '"closed"', ["spring.ends", "'closed'", "squared and ground"]),
     "unknown criterion": ('"gerber"', '"gerbr"', ["judge.criterion", "'gerbr'", "did you mean 'gerber'"]),
     "unknown endurance": ("[judge]", '[judge]\nendurance = "zimmermann"', ["zimmermann", "zimmerli", "handbook"]),

@@ -56,7 +56,7 @@ FAULTS = [
     ("too-hot", "warn", [('"A228"', '"A401"'), ("total_coils", 'temperature = "235 degC"\nshot_peened = true\ntotal_coils')]),
     ("buckles", "stop", [("total_coils = 12", "total_coils = 40"), ('"55 mm"', '"180 mm"'), ('"20 mm"', '"60 mm"')]),
     ("hydrogen", "warn", [("total_coils", 'finish = "plated"\ntotal_coils')]),
-    ("below-1e3", "stop", [("total_coils", 'tensile_strength = "820 MPa"\nset_removed = true\ntotal_coils')]),
+    ("below-1e3", "stop", [("total_coils", 'tensile_strength = "870 MPa"\ntotal_coils'), ('"5 mm"', '"0 mm"'), ('"20 mm"', '"30 mm"')]),
     ("slope-implausible", "warn", [("[judge]", "[limits]\nslope_low = 30.0\n[judge]")]),
     ("assumed-curve", "note", []),
     ("not-covered", "note", []),
@@ -130,8 +130,9 @@ def test_mean_past_the_intercept_is_a_static_failure(tmp_path: Path) -> None:
 
 
 def test_incoherent_strength_withholds_the_chosen_criterion_and_only_marks_the_others(tmp_path: Path) -> None:
-    # Peened at Sut = 1150 MPa: Ssm 534 MPa is past Ssy = 0.45 Sut = 517 MPa, so ASME-elliptic has no value.
-    weak = ("total_coils", 'tensile_strength = "1150 MPa"\nshot_peened = true\ntotal_coils')
+    # Peened at Sut = 1300 MPa: Ssm 534 MPa is near Ssy = 0.45 Sut = 585 MPa, so that ASME-elliptic's Sse, 970 MPa,
+    # is above 0.9 Ssu = 784 MPa; Gerber's, 636 MPa, is not.
+    weak = ("total_coils", 'tensile_strength = "1300 MPa"\nshot_peened = true\ntotal_coils')
     others = ('"55 mm"', '"40 mm"'), ('"20 mm"', '"10 mm"')
     result = judged(tmp_path, [weak, *others, ('"gerber"', '"asme-elliptic"')])
     assert "strength-incoherent" in {f.code for f in result.findings if f.level == "stop"}

@@ -6,6 +6,7 @@ its key, the value seen and what would be right.
 
 from __future__ import annotations
 
+import difflib
 import hashlib
 import tomllib
 from collections.abc import Iterator
@@ -375,6 +376,9 @@ def _checked(raw: dict[str, Any], path: Path, where: str = "", only: tuple[str, 
         return CaseInput.model_validate(raw)
     except ValidationError as error:
         faults = [fault for fault in error.errors() if not only or fault["loc"][:1] in {(key,) for key in only}]
+        misspelt = {_meant(fault["loc"]) for fault in faults if fault["type"] == "extra_forbidden"}
+        # A key that was only misspelt is not told a second time as missing.
+        faults = [fault for fault in faults if fault["type"] != "missing" or fault["loc"] not in misspelt]
         lines = [f"{path}: {where}{_sentence(dict(fault))}" for fault in faults]
         raise InputError("\n".join(lines)) from error
 
@@ -395,6 +399,12 @@ def _sentence(fault: dict[str, Any]) -> str:
         return f"{key}: {value!r} is not known; {nearest(str(value), _choices(loc))}"
     seen = "a table" if isinstance(value, dict) else "a list" if isinstance(value, list) else repr(value)
     return f"{key}: {seen} cannot be used; {fault['msg'][0].lower()}{fault['msg'][1:]}"
+
+
+def _meant(loc: tuple[Any, ...]) -> tuple[Any, ...]:
+    """Guess which key an unknown one was meant to be."""
+    close = difflib.get_close_matches(str(loc[-1]), _fields(loc[:-1]), n=1)
+    return (*loc[:-1], *close)
 
 
 def _place(loc: tuple[Any, ...]) -> str:
