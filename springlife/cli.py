@@ -105,7 +105,9 @@ def _count_command(commands: Any) -> None:
     parser.add_argument("--rate", metavar="RATE", help="sample rate, such as '500 Hz'")
     parser.add_argument("--unit", help="unit of the channel; counted as plain numbers without one")
     parser.add_argument("--residue", choices=("half", "repeat", "drop"), default="half", help="default: half")
-    parser.add_argument("--gate", type=float, default=0.0, help="drop cycles with a range up to this, in the channel's unit")
+    parser.add_argument(
+        "--gate", type=float, default=0.0, help="drop cycles with a range up to this, in the channel's unit"
+    )
     parser.add_argument("--gaps", choices=("error", "split"), default="error", help="default: error")
     parser.add_argument("--recount", action="store_true", help="recount with the rainflow package and compare")
     parser.add_argument("--top", type=int, default=12, metavar="N", help="rows to print (default 12; 0 for all)")

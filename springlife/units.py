@@ -105,7 +105,7 @@ def split(text: str) -> tuple[float, str]:
         When the text does not start with one finite number.
     """
     if not isinstance(text, str):
-        raise InputError(f"{text!r} has no unit; write it as text with its unit, such as \"{text} mm\"")
+        raise InputError(f'{text!r} has no unit; write it as text with its unit, such as "{text} mm"')
     if re.match(r"\s*[+-]?\d+,\d", text):
         raise InputError(f"{text!r} has a decimal comma; write a decimal point")
     match = _QUANTITY.fullmatch(text)

@@ -14,8 +14,8 @@ from pathlib import Path
 
 INCH, PSI, LBF = 0.0254, 6894.757293168361, 4.4482216152605
 UNIT = {"mm": 1e-3, "in": INCH}
-# ASTM grade: A in kpsi in^m, exponent m, E and G in Mpsi, static limit over Sut (before set removal)
-WIRE = {"A232": (169.0, 0.168, 29.5, 11.2, 0.50), "A228": (201.0, 0.145, 28.5, 11.75, 0.45)}
+# ASTM grade: A in kpsi in^m, exponent m, G in Mpsi
+WIRE = {"A232": (169.0, 0.168, 11.2), "A228": (201.0, 0.145, 11.75)}
 ZIMMERLI = {False: (35.0, 55.0), True: (57.5, 77.5)}  # peened: Ssa, Ssm in kpsi
 
 
@@ -67,7 +67,7 @@ def damage_per_pass(case_file: Path, peened: bool | None = None) -> float:
     spring = case["spring"]
     d = length(spring["wire_diameter"])
     D = length(spring["mean_diameter"]) if "mean_diameter" in spring else length(spring["outer_diameter"]) - d
-    A, m, _, G, static = WIRE[spring["grade"]]
+    A, m, G = WIRE[spring["grade"]]
     Sut = A * 1000 * PSI / (d / INCH) ** m
     Na = spring["total_coils"] - 2
     rate = d**4 * G * 1e6 * PSI / (8 * D**3 * Na)

@@ -130,7 +130,8 @@ def test_scaling_all_lengths_scales_rate_and_keeps_stress(tmp_path: Path) -> Non
 
 def test_no_motion_means_unlimited_life(tmp_path: Path) -> None:
     text = QUIET.replace(
-        'blocks = [{ low = "5 mm", high = "20 mm", cycles = 100 }]', 'record = "work.csv"\nchannel = "y"\nunit = "mm"'
+        'blocks = [{ low = "5 mm", high = "20 mm", cycles = 100 }]',
+        'record = "work.csv"\nchannel = "y"\nunit = "mm"',
     )
     result = assess(write_case(tmp_path, text, "y\n5\n5\n5\n"))
     assert result.verdict == "meets" and result.judgement is not None
@@ -151,7 +152,8 @@ def test_judging_again_reads_nothing(tmp_path: Path) -> None:
 def test_force_and_length_records_give_the_deflection_record_s_damage(tmp_path: Path) -> None:
     """The same motion told as deflection, length and force is the same duty."""
     text = QUIET.replace(
-        'blocks = [{ low = "5 mm", high = "20 mm", cycles = 100 }]', 'record = "work.csv"\nchannel = "y"\nUNIT'
+        'blocks = [{ low = "5 mm", high = "20 mm", cycles = 100 }]',
+        'record = "work.csv"\nchannel = "y"\nUNIT',
     )
     y = np.array([5.0, 20, 8, 16, 4, 19, 5])
     rate = 4.0

@@ -91,7 +91,11 @@ BAD_RECORDS: dict[str, tuple[str | bytes, list[str], int]] = {
     "blank cell": (RECORD.replace("15", ""), ["work.csv", "travel"], 3),
     "infinite": (RECORD.replace("15", "inf"), ["work.csv", "travel", "inf"], 2),
     "time going back": (RECORD.replace("0.3,", "0.15,"), ["work.csv", "0.15"], 3),
-    "duplicate header": (RECORD.replace("t,travel", "t,travel,travel").replace("\n0", "\n0"), ["work.csv"], 2),
+    "duplicate header": (
+        RECORD.replace("t,travel", "t,travel,travel").replace("\n0", "\n0"),
+        ["work.csv"],
+        2,
+    ),
     "ragged row": (RECORD.replace("0.3,15", "0.3,15,7"), ["work.csv"], 2),
     "binary junk": (bytes(range(256)) * 40, ["work.csv"], 2),
     "a long line": ("t,travel," + "9" * 10_000_000, ["work.csv"], 2),
@@ -163,7 +167,15 @@ def test_withheld_for_the_part(
     assert code == 3 and finding in text, text
 
 
-@pytest.mark.parametrize("words", [["nonsense"], ["assess"], ["assess", "case.toml", "--nonsense"], ["count", "x.csv", "--residue", "none"]])
+@pytest.mark.parametrize(
+    "words",
+    [
+        ["nonsense"],
+        ["assess"],
+        ["assess", "case.toml", "--nonsense"],
+        ["count", "x.csv", "--residue", "none"],
+    ],
+)
 def test_bad_usage(words: list[str], capsys: pytest.CaptureFixture[str]) -> None:
     with pytest.raises(SystemExit) as stop:
         main(words)

@@ -85,7 +85,10 @@ def test_fault_is_found(code: str, level: str, changes: list[tuple[str, str]], t
 
 
 RECORDED = [
-    (f"blocks = [{{ {BLOCK} }}]", 'record = "work.csv"\nchannel = "y"\nsample_rate = "50 Hz"\nunit = "mm"\nrepeats = 3')
+    (
+        f"blocks = [{{ {BLOCK} }}]",
+        'record = "work.csv"\nchannel = "y"\nsample_rate = "50 Hz"\nunit = "mm"\nrepeats = 3',
+    )
 ]
 
 

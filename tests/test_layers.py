@@ -65,7 +65,19 @@ def loaded_after(code: str) -> set[str]:
 
 
 def test_importing_the_package_loads_nothing_heavy() -> None:
-    heavy = {"numpy", "pandas", "scipy", "matplotlib", "numba", "pint", "pydantic", "rich", "pyarrow", "jinja2", "typst"}
+    heavy = {
+        "numpy",
+        "pandas",
+        "scipy",
+        "matplotlib",
+        "numba",
+        "pint",
+        "pydantic",
+        "rich",
+        "pyarrow",
+        "jinja2",
+        "typst",
+    }
     assert not heavy & loaded_after("import springlife")
 
 

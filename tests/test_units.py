@@ -80,7 +80,9 @@ def test_how_many_passes(amount: str, per: str, passes: float) -> None:
     assert units.ratio(amount, per) == pytest.approx(passes)
 
 
-@pytest.mark.parametrize(("amount", "per"), [("8000 h", "1 km"), ("10 starts", "1 stop"), ("1 h", "0 h"), ("5 km", "1 start")])
+@pytest.mark.parametrize(
+    ("amount", "per"), [("8000 h", "1 km"), ("10 starts", "1 stop"), ("1 h", "0 h"), ("5 km", "1 start")]
+)
 def test_amounts_that_do_not_compare(amount: str, per: str) -> None:
     with pytest.raises(InputError):
         units.ratio(amount, per)

@@ -12,6 +12,7 @@ from typing import Any
 
 import numpy as np
 
+from springlife.duty.schedule import EventCycles
 from springlife.errors import CriterionError, GapError, InputError
 from springlife.life import findings as notice
 from springlife.life.case import Case, load_case
@@ -19,7 +20,6 @@ from springlife.life.damage import DamageModel, Floats, greatest_factor
 from springlife.life.findings import Finding
 from springlife.life.limits import limit_values
 from springlife.life.reading import Duty, read_duty
-from springlife.duty.schedule import EventCycles
 from springlife.spring.grade import WireRangeError
 from springlife.spring.helical import GeometryError, HelicalSpring
 from springlife.spring.stress import StressMap, stress_map
@@ -122,9 +122,8 @@ class Assessment:
     def inputs(self) -> tuple[tuple[str, str], ...]:
         """Name and SHA-256 of the case file and of every record."""
         records = () if self.duty is None else self.duty.events
-        return ((self.case.path.name, self.case.sha256),) + tuple(
-            (str(event.record), event.sha256) for event in records if event.record is not None and event.sha256
-        )
+        read = [(str(event.record), event.sha256) for event in records if event.record and event.sha256]
+        return ((self.case.path.name, self.case.sha256), *read)
 
     def to_dict(self) -> dict[str, Any]:
         """Give everything for JSON; SI values under keys that name the unit."""
@@ -349,9 +348,13 @@ def _factors(
         except CriterionError:
             factors[name.replace("-", "_")] = None
             continue
-        load = (tau_a, tau_m, tau_m - tau_a) if fixed else (tau_a, tau_m)
-        law = rule.factor_fixed_preload if fixed else rule.safety_factor
-        factors[name.replace("-", "_")] = float(law(*load, Sse, model.Ssu, model.Ssy))
+        strengths = (Sse, model.Ssu, model.Ssy)
+        factor = (
+            rule.factor_fixed_preload(tau_a, tau_m, tau_m - tau_a, *strengths)
+            if fixed
+            else rule.safety_factor(tau_a, tau_m, *strengths)
+        )
+        factors[name.replace("-", "_")] = float(factor)
     factors["yield"] = float(yield_factor(tau_a, tau_m, spring.static_limit))
     return factors
 

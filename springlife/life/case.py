@@ -134,9 +134,9 @@ class EventInput(_Table):
             if extra:
                 raise ValueError(f"{extra[0]!r} belongs to a record; blocks are deflections with their own unit")
         if self.measures == "travel" and self.installed_deflection is None:
-            raise ValueError("measures = \"travel\" needs installed_deflection, such as \"22 mm\"")
+            raise ValueError('measures = "travel" needs installed_deflection, such as "22 mm"')
         if self.measures != "travel" and self.installed_deflection is not None:
-            raise ValueError(f"installed_deflection is used with measures = \"travel\", not {self.measures!r}")
+            raise ValueError(f'installed_deflection is used with measures = "travel", not {self.measures!r}')
         if self.time is not None and self.sample_rate is not None:
             raise ValueError("give either time or sample_rate, not both")
         if self.scale == 0:

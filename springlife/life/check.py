@@ -123,7 +123,10 @@ def _event_rows(event: EventReading, say: UnitSystem) -> Rows:
     c = event.count
     rows = [
         ("happens", f"{event.repeats} times a pass"),
-        ("cycles", f"{significant(float(c.table('half').count.sum()), 6)} counted, residue of {c.residue.size} points"),
+        (
+            "cycles",
+            f"{significant(float(c.table('half').count.sum()), 6)} counted, residue of {c.residue.size} points",
+        ),
         ("extremes", f"{say(c.minimum, kind)} to {say(c.maximum, kind)} {event.measures}"),
     ]
     if event.record is not None:

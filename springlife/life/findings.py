@@ -150,9 +150,7 @@ def of_motion(
         yield found("buckles", message, "note" if spring.guided else "stop")
 
 
-def _solid(
-    duty: Duty, high: float, solid: float, limits: Mapping[str, float], say: UnitSystem
-) -> Iterator[Finding]:
+def _solid(duty: Duty, high: float, solid: float, limits: Mapping[str, float], say: UnitSystem) -> Iterator[Finding]:
     if high > solid:
         past = [
             f"{event.name!r} {event.past_solid.describe()}"
@@ -212,7 +210,12 @@ def of_curve(model: DamageModel, limits: Mapping[str, float], assumed: bool) -> 
 
 
 def of_damage(
-    model: DamageModel, cycles: EventCycles, damage: Floats, duty: Duty, limits: Mapping[str, float], say: UnitSystem
+    model: DamageModel,
+    cycles: EventCycles,
+    damage: Floats,
+    duty: Duty,
+    limits: Mapping[str, float],
+    say: UnitSystem,
 ) -> Iterator[Finding]:
     """Yield what the cycles' lives show: static failures, lives under the curve, one cycle that rules."""
     lives = model.cycles_to_failure(cycles.low, cycles.high)

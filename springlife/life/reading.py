@@ -17,8 +17,8 @@ from springlife.duty.schedule import Event, Pass
 
 if TYPE_CHECKING:
     from springlife.duty.record import RecordSummary
-    from springlife.life.case import Case, EventInput
     from springlife.duty.schedule import Floats
+    from springlife.life.case import Case, EventInput
     from springlife.spring.helical import HelicalSpring
 
 MEASURES = {
@@ -187,9 +187,7 @@ def _read_event(case: Case, event: EventInput, spring: HelicalSpring) -> EventRe
     return _read_record(case, event, spring, off, past)
 
 
-def _read_record(
-    case: Case, event: EventInput, spring: HelicalSpring, off: Beyond, past: Beyond
-) -> EventReading:
+def _read_record(case: Case, event: EventInput, spring: HelicalSpring, off: Beyond, past: Beyond) -> EventReading:
     from springlife.duty.record import RecordSpec, SummaryAccumulator, open_record
 
     assert event.record is not None  # the case file has been checked

@@ -9,7 +9,8 @@ from typing import Any, Literal
 
 import numpy as np
 
-from springlife.duty.counting import Count, Tally as Counter
+from springlife.duty.counting import Count
+from springlife.duty.counting import Tally as Counter
 from springlife.duty.record import RecordSpec, open_record
 from springlife.units import significant
 

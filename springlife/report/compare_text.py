@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from springlife.report.terminal import console_for_output, print_findings, quantity_of_life, print_table
+from springlife.report.terminal import console_for_output, print_findings, print_table, quantity_of_life
 from springlife.strength.criteria import CRITERIA
 from springlife.units import significant
 

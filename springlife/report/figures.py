@@ -6,14 +6,15 @@ repeats it. Units stand on every axis.
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from springlife.errors import CriterionError
 from springlife.life.assess import model_of
+from springlife.life.damage import Floats
 from springlife.strength import endurance
 from springlife.strength.criteria import CRITERIA
 from springlife.units import convert, significant
@@ -52,7 +53,7 @@ def _axes(size: tuple[float, float] = SIZE) -> Iterator[tuple[Figure, Axes]]:
     from matplotlib.backends.backend_agg import FigureCanvasAgg
     from matplotlib.figure import Figure
 
-    with matplotlib.rc_context(STYLE):
+    with matplotlib.rc_context(STYLE):  # type: ignore[arg-type]  # its keys are plain strings here
         figure = Figure(figsize=size, layout="constrained")
         FigureCanvasAgg(figure)
         yield figure, figure.add_subplot()
@@ -73,9 +74,10 @@ def haigh(result: Assessment) -> Figure:
         raise ValueError("the case was not judged, so there is nothing to draw")
     j, unit = result.judgement, result.say.units["stress"]
 
-    def to(values: object) -> np.ndarray:
-        scale = convert(1.0, unit, "stress")
-        return np.asarray(values, dtype=float) * scale
+    scale = convert(1.0, unit, "stress")
+
+    def to(values: Any) -> Floats:
+        return np.asarray(values, dtype=np.float64) * scale
 
     with _axes() as (figure, axes):
         tau_a, tau_m = j.model.stress.cycles(j.cycles.low, j.cycles.high)
@@ -100,18 +102,17 @@ def haigh(result: Assessment) -> Figure:
         axes.plot([0, limit], [limit, 0], color=GREY, linewidth=1.0, linestyle=(0, (3, 3)), zorder=1)
         axes.set_xlim(0, 1.08 * max(limit, float(to(j.spring.Ssu))))
         axes.set_ylim(0, 1.25 * max(top, float(to(tau_a.max(initial=0.0)))))
-        bottom, height = axes.get_ylim()
-        x = limit - 0.5 * height
-        if x > 0:
-            axes.annotate("yield", (limit - 0.62 * height, 0.62 * height), xytext=(5, 3), textcoords="offset points",
-                          color=GREY)  # fmt: skip
+        height = axes.get_ylim()[1]
+        if limit > 0.62 * height:
+            place = (limit - 0.62 * height, 0.62 * height)
+            axes.annotate("yield", place, xytext=(5, 3), textcoords="offset points", color=GREY)
         axes.set_xlabel(f"mean shear stress, {unit}")
         axes.set_ylabel(f"alternating shear stress, {unit}")
         axes.legend(loc="upper right", frameon=False)
     return figure
 
 
-def _criteria_lines(axes: Axes, result: Assessment, j: Judgement, to: object) -> float:
+def _criteria_lines(axes: Axes, result: Assessment, j: Judgement, to: Callable[[Any], Floats]) -> float:
     """Draw each criterion's line at the knee; the chosen one heavier. Return the largest Sse drawn."""
     top = 0.0
     means = np.linspace(0.0, j.spring.Ssu, 200)
@@ -122,13 +123,13 @@ def _criteria_lines(axes: Axes, result: Assessment, j: Judgement, to: object) ->
             continue
         chosen = name == result.case.judge.criterion
         axes.plot(
-            to(means),  # type: ignore[operator]
-            to(rule.allowable(means, Sse, j.spring.Ssu, j.spring.Ssy)),  # type: ignore[operator]
+            to(means),
+            to(rule.allowable(means, Sse, j.spring.Ssu, j.spring.Ssy)),
             color=INK if chosen else GREY,
             linewidth=1.8 if chosen else 1.0,
             linestyle=PATTERNS[name],
-            label=f"{name}, Sse {significant(float(to(Sse)), 3)}" + (" (chosen)" if chosen else ""),  # type: ignore[operator]
+            label=f"{name}, Sse {significant(float(to(Sse)), 3)}" + (" (chosen)" if chosen else ""),
             zorder=4 if chosen else 2,
         )
-        top = max(top, float(to(Sse))) if chosen else top  # type: ignore[operator]
+        top = max(top, float(to(Sse))) if chosen else top
     return top

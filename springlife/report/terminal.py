@@ -53,7 +53,9 @@ def print_rows(console: Console, rows: Iterable[tuple[str, str]], style: str = "
     console.print(table)
 
 
-def print_table(console: Console, title: str, heads: Sequence[str], rows: Iterable[Sequence[str]], left: int = 1) -> None:
+def print_table(
+    console: Console, title: str, heads: Sequence[str], rows: Iterable[Sequence[str]], left: int = 1
+) -> None:
     """Print a plain table: the first ``left`` columns flush left, numbers flush right."""
     from rich.table import Table
     from rich.text import Text
