@@ -15,6 +15,7 @@ import numpy as np
 from springlife.duty.schedule import EventCycles
 from springlife.errors import CriterionError, GapError, InputError
 from springlife.life import findings as notice
+from springlife.life.band import BandRow, Mover, greatest_mover
 from springlife.life.case import Case, load_case
 from springlife.life.damage import DamageModel, Floats, greatest_factor
 from springlife.life.findings import Finding
@@ -52,17 +53,6 @@ class WorstCycle:
     count: float
     share: float
     events: tuple[str, str]
-
-
-@dataclass(frozen=True)
-class BandRow:
-    """A life under one published choice; ``withheld`` says why there is none."""
-
-    criterion: str
-    endurance: str
-    miner: str
-    life_passes: float | None
-    withheld: str | None = None
 
 
 @dataclass(frozen=True)
@@ -112,6 +102,14 @@ class Assessment:
         number, unit = self.target
         per_pass = number / self.case.duty.target_passes
         return (None if passes is None else passes * per_pass), unit
+
+    @property
+    def mover(self) -> Mover | None:
+        """The published choice that moves the life most."""
+        if self.judgement is None:
+            return None
+        ours = self.case.judge
+        return greatest_mover(self.judgement.band, criterion=ours.criterion, endurance=ours.endurance, miner=ours.miner)
 
     @property
     def sources(self) -> tuple[str, ...]:

@@ -109,7 +109,8 @@ def _spring_rows(spring: HelicalSpring, say: UnitSystem) -> Rows:
     return [
         ("wire", f"{spring.grade.title}, {say(spring.wire_diameter, 'length')}, Sut {say(spring.Sut, 'stress')}"),
         ("coil", f"mean diameter {say(spring.mean_diameter, 'length')}, index {significant(spring.index, 3)}, "
-                 f"{significant(spring.active_coils)} active of {significant(spring.total_coils)} coils, {spring.ends}"),
+                 f"{significant(spring.active_coils)} of {significant(spring.total_coils)} coils active, "
+                 f"{spring.ends}"),
         ("length", f"free {say(spring.free_length, 'length')}, solid {say(spring.solid_length, 'length')}"),
         ("rate", say(spring.rate, "rate") + (
             f" (measured; {say(spring.calculated_rate, 'rate')} calculated)" if spring.measured_rate else "")),

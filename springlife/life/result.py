@@ -29,6 +29,7 @@ def as_dict(assessment: Assessment) -> dict[str, Any]:
     }
     data |= _numbers(judgement) if judgement else _NO_NUMBERS
     data |= {
+        "band_moved_most_by": assessment.mover.sentence() if assessment.mover else None,
         "judged_by": case.judge.model_dump(),
         "limits_changed": dict(case.input.limits),
         "findings": [finding.to_dict() for finding in assessment.findings],

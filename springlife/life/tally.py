@@ -41,8 +41,8 @@ class Tally:
         c = self.count
         lines = [
             ("record", f"{self.path}, channel {self.channel}"),
-            ("cycles", f"{significant(self.cycles, 6)} in {len(self.table)} classes, residue of {c.residue.size} points "
-                       f"({self.residue})"),
+            ("cycles", f"{significant(self.cycles, 6)} in {len(self.table)} classes"),
+            ("residue", f"{c.residue.size} turning points, read as {self.residue}"),
         ]  # fmt: skip
         if c.residue.size:
             unit = f" {self.unit}" if self.unit else ""

@@ -15,7 +15,8 @@ from springlife.units import METRIC, significant
 if TYPE_CHECKING:
     from rich.console import Console
 
-    from springlife.life.assess import Assessment, BandRow, Judgement
+    from springlife.life.assess import Assessment, Judgement
+    from springlife.life.band import BandRow
     from springlife.life.check import CheckResult
     from springlife.life.findings import Finding
     from springlife.life.tally import Tally
@@ -206,6 +207,8 @@ def _print_band(console: Console, result: Assessment) -> None:
     ]
     title = "Life under every published choice"
     print_table(console, title, ("endurance", "Miner", *criteria), rows, left=2)
+    if result.mover:
+        print_rows(console, [("", f"One choice changed at a time, {result.mover.sentence()}.")])
     reasons = dict.fromkeys(row.withheld for row in band if row.withheld)
     if reasons:
         print_rows(console, [("withheld", reason or "") for reason in reasons], style="dim")
