@@ -70,6 +70,8 @@ def _parser() -> argparse.ArgumentParser:
     grades.add_argument("grade", nargs="?", help="one grade in full")
     grades.add_argument("--file", metavar="GRADES.toml", type=Path, help="a grades file of your own")
     _finish(grades, _grades)
+    verify = commands.add_parser("verify", help="recompute the published examples on this machine")
+    _finish(verify, _verify)
     return parser
 
 
@@ -188,6 +190,19 @@ def _count(arguments: argparse.Namespace) -> int:
 
         print_tally(result, arguments.top)
     return 0 if result.agrees in (None, True) else 1
+
+
+def _verify(arguments: argparse.Namespace) -> int:
+    from springlife.life.verify import verify
+
+    result = verify()
+    if arguments.json:
+        _print_json(result.to_dict())
+    else:
+        from springlife.report.terminal import print_verification
+
+        print_verification(result)
+    return 0 if result.passed else 1
 
 
 def _grades(arguments: argparse.Namespace) -> int:

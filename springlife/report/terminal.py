@@ -20,6 +20,7 @@ if TYPE_CHECKING:
     from springlife.life.check import CheckResult
     from springlife.life.findings import Finding
     from springlife.life.tally import Tally
+    from springlife.life.verify import Verification
     from springlife.spring.grade import Grade
 
 # Words and weight carry the meaning; colour only repeats it.
@@ -266,3 +267,22 @@ def print_grades(grades: Sequence[Grade], *, full: bool) -> None:
     if full:
         for entry in grades:
             print_rows(console, [("", line) for line in entry.describe()])
+
+
+def print_verification(result: Verification) -> None:
+    """Print every published answer beside ours, then what agrees."""
+    console = console_for_output()
+    rows = [
+        (
+            row.check.id,
+            row.answer.name,
+            row.answer.text,
+            significant(row.ours, 6),
+            "agrees" if row.agrees else "DIFFERS",
+        )
+        for row in result.rows
+    ]
+    print_table(console, "Published examples", ("example", "quantity", "printed", "here", ""), rows, left=2)
+    agreeing = sum(row.agrees for row in result.rows)
+    recounts = f"{result.recounts_agree} of {result.recounted} random histories recounted by the rainflow package agree"
+    print_rows(console, [("", f"{agreeing} of {len(rows)} printed answers agree; {recounts}.")])
