@@ -34,9 +34,7 @@ def channel_unit(spec: RecordSpec, table: Table) -> tuple[str | None, tuple[floa
     if spec.kind is None:
         return unit, (slope, intercept), steps
     if not unit:
-        raise InputError(
-            f'{place}: neither the file nor the case says its unit; add unit = "mm" or the right one'
-        )
+        raise InputError(f'{place}: neither the file nor the case says its unit; add unit = "mm" or the right one')
     try:
         factor, shift = units.factor(unit, spec.kind)
     except InputError as error:
@@ -54,8 +52,7 @@ def time_unit(spec: RecordSpec, table: Table) -> tuple[float, str | None]:
     place = f"{spec.path}, column {title!r}"
     if spec.time_unit and stated and not _same_unit(spec.time_unit, stated):
         raise InputError(
-            f"{place}: the time unit is {stated!r} in the file and {spec.time_unit!r} in the case; "
-            "drop the latter"
+            f"{place}: the time unit is {stated!r} in the file and {spec.time_unit!r} in the case; drop the latter"
         )
     unit = spec.time_unit or stated
     if unit is None:
@@ -68,11 +65,7 @@ def time_unit(spec: RecordSpec, table: Table) -> tuple[float, str | None]:
 
 def stated_rate(spec: RecordSpec, table: Table) -> float | None:
     """Return the rate that the case or the file states; both must agree."""
-    if (
-        spec.sample_rate
-        and table.sample_rate
-        and not np.isclose(spec.sample_rate, table.sample_rate, rtol=1e-6)
-    ):
+    if spec.sample_rate and table.sample_rate and not np.isclose(spec.sample_rate, table.sample_rate, rtol=1e-6):
         raise InputError(
             f"{spec.path}: the sample rate is {table.sample_rate:g} Hz in the file and {spec.sample_rate:g} "
             "Hz in the case; drop the latter"

@@ -38,9 +38,7 @@ class Clock:
     last: float | None = None
     interval: float | None = None  # the usual one
     longest: float = np.inf  # an interval longer than this is a gap
-    rounded_to: float | None = (
-        None  # the stamps' resolution, when they are rounded more coarsely than the rate
-    )
+    rounded_to: float | None = None  # the stamps' resolution, when they are rounded more coarsely than the rate
     repeats: int = 0
     breaks: int = 0
     start: float | None = None

@@ -76,13 +76,9 @@ class RecordSpec:
     def __post_init__(self) -> None:
         """Check what can be checked without the file."""
         if self.time is not None and self.sample_rate is not None:
-            raise InputError(
-                f"{self.path}: has both a time column {self.time!r} and a sample rate; give one of them"
-            )
+            raise InputError(f"{self.path}: has both a time column {self.time!r} and a sample rate; give one of them")
         if self.sample_rate is not None and not (np.isfinite(self.sample_rate) and self.sample_rate > 0):
-            raise InputError(
-                f"{self.path}: sample_rate is {self.sample_rate:g} Hz; it must be greater than zero"
-            )
+            raise InputError(f"{self.path}: sample_rate is {self.sample_rate:g} Hz; it must be greater than zero")
         if not (np.isfinite(self.scale) and self.scale != 0 and np.isfinite(self.offset)):
             raise InputError(
                 f"{self.path}: scale {self.scale:g} and offset {self.offset:g} must be finite, scale not zero"
@@ -235,9 +231,7 @@ class Recording:
         times = np.asarray(chunk.times, dtype=np.float64) * self._second
         infinite = np.flatnonzero(np.isinf(times))
         if infinite.size:
-            raise InputError(
-                f"{self.path}, {chunk.place(int(infinite[0]))}: the time is not finite; correct the cell"
-            )
+            raise InputError(f"{self.path}, {chunk.place(int(infinite[0]))}: the time is not finite; correct the cell")
         return times
 
     def _elapsed(self, stamps: Stamps) -> Floats:
@@ -275,9 +269,7 @@ class Recording:
         """Judge what only the whole record shows."""
         if self._samples < 2:
             seen = "no rows" if self._samples == 0 else "only one row"
-            raise InputError(
-                f"{self.path}, column {self.channel!r}: has {seen}; a record needs at least two samples"
-            )
+            raise InputError(f"{self.path}, column {self.channel!r}: has {seen}; a record needs at least two samples")
         if self._first_repeat and self.spec.gaps == "error":
             raise GapError(
                 f"{self.path}, {self._first_repeat}, {self._clock.repeats} repeated times in all; repair the "
@@ -293,9 +285,7 @@ class Recording:
             steps.append(self._origin_step or self._time_step)
         if self._clock.rounded_to is not None:
             rounded = significant(self._clock.rounded_to)
-            steps.append(
-                f"times are evenly spaced but rounded to {rounded} s; repeated or skipped times are no gaps"
-            )
+            steps.append(f"times are evenly spaced but rounded to {rounded} s; repeated or skipped times are no gaps")
         if self.gaps_found:
             listed = "; ".join(self._places) + ("; and so on" if self.gaps_found > len(self._places) else "")
             steps.append(f"split at {self.gaps_found} {'gap' if self.gaps_found == 1 else 'gaps'}: {listed}")

@@ -14,13 +14,13 @@ from collections.abc import Iterable
 from dataclasses import dataclass
 from pathlib import Path
 
+from springlife.duty.formats.dates import STAMP
 from springlife.duty.formats.table import Column
 from springlife.errors import InputError
 
 HEAD = 1 << 16  # bytes looked at; a preamble longer than this is refused
 MISSING = frozenset({"", "nan", "-nan", "na", "n/a", "#n/a", "null"})
-NUMBER = re.compile(r"[+-]?(?:\d+[.,]?\d*|[.,]\d+)(?:[eE][+-]?\d+)?|[+-]?inf(?:inity)?", re.IGNORECASE)
-STAMP = re.compile(r"(\d{4}-\d{2}-\d{2})[T ](\d{2}:\d{2}(?::\d{2}(?:[.,]\d{1,9})?)?)(Z|[+-]\d{2}:?\d{2})?")
+NUMBER = re.compile(r"[+-]?(?:\d+[.,]?\d*|[.,]\d+)(?:[eE][+-]?\d+)?|[+-]?inf(?:inity)?", re.IGNORECASE | re.ASCII)
 _COMMENT = re.compile(r"\s*(#|//|%)+")
 _BOMS = ((codecs.BOM_UTF8, "utf-8-sig"), (codecs.BOM_UTF16_LE, "utf-16"), (codecs.BOM_UTF16_BE, "utf-16"))
 _ENCODINGS = {
@@ -125,9 +125,7 @@ def layout_of(path: Path, text: str, encoding: str, wanted: Iterable[str | int |
     steps = [_ENCODINGS[encoding]]
     steps.append(f"{count} columns between {_NAMES[delimiter]}" if count > 1 else "one column")
     steps.append(f"decimal {'comma' if decimal == ',' else 'point'}")
-    steps.append(
-        f"numbers from row {start}" + ("" if names else ", no header") + (", units row" if units else "")
-    )
+    steps.append(f"numbers from row {start}" + ("" if names else ", no header") + (", units row" if units else ""))
     return Layout(encoding, delimiter, decimal, width, columns, names is not None, start, (", ".join(steps),))
 
 
@@ -163,21 +161,15 @@ def _records(path: Path, text: str, delimiter: str) -> list[_Record]:
                 records.append(_Record(line, cells, comment))
             line = reader.line_num + 1
     except csv.Error as error:
-        raise InputError(
-            f"{path}, row {line}: cannot be split into cells ({error}); correct the row"
-        ) from error
+        raise InputError(f"{path}, row {line}: cannot be split into cells ({error}); correct the row") from error
     return records
 
 
 def _no_table(text: str) -> str:
     lines = [line.strip() for line in text.splitlines() if line.strip()]
-    spaced = next(
-        (line for line in lines if len(line.split()) > 1 and all(map(NUMBER.fullmatch, line.split()))), None
-    )
+    spaced = next((line for line in lines if len(line.split()) > 1 and all(map(NUMBER.fullmatch, line.split()))), None)
     if spaced:
-        return (
-            f"columns are separated by spaces ({spaced[:60]!r}); save with commas, semicolons or tabs instead"
-        )
+        return f"columns are separated by spaces ({spaced[:60]!r}); save with commas, semicolons or tabs instead"
     if len(lines) <= 2:
         return f"has a header but no rows of numbers (it begins {lines[0][:60]!r}); export the record again"
     return f"no rows of numbers found (it begins {lines[0][:60]!r}); save it as a table with one row a sample"
@@ -239,9 +231,7 @@ def _text_above(records: list[_Record], i: int, width: int) -> list[list[str]]:
         cells = list(record.cells)
         while len(cells) > width and cells[-1] == "":
             cells.pop()
-        short = len(cells) == width - 1 and all(
-            r.cells[-1] == "" for r in records[i:] if len(r.cells) == width
-        )
+        short = len(cells) == width - 1 and all(r.cells[-1] == "" for r in records[i:] if len(r.cells) == width)
         if record.is_data or not record.is_text or not (len(cells) == width or short):
             break
         if record.comment and (run and not comments):

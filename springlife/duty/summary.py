@@ -58,9 +58,7 @@ class RecordSummary:
         lines = [("samples", f"{self.samples}{span}{rate}")]
         grain = f"more than {LEVELS}" if self.levels is None else str(self.levels)
         lines.append(("levels", f"{grain} distinct values"))
-        runs = (
-            f"{self.longest_at_minimum} samples at the least value, {self.longest_at_maximum} at the greatest"
-        )
+        runs = f"{self.longest_at_minimum} samples at the least value, {self.longest_at_maximum} at the greatest"
         lines.append(("longest runs", runs))
         if self.drift is not None and self.maximum > self.minimum:
             share = 100 * self.drift / (self.maximum - self.minimum)

@@ -15,9 +15,7 @@ from springlife.errors import InputError, nearest
 Floats = NDArray[np.float64]
 Stamps = NDArray[np.datetime64]
 
-_WITH_UNIT = re.compile(
-    r"(?P<name>.+?)\s*(?:\[(?P<square>[^\[\]]*)\]|\((?P<round>[^()]*)\)|\s/\s*(?P<slash>\S+))\s*"
-)
+_WITH_UNIT = re.compile(r"(?P<name>.+?)\s*(?:\[(?P<square>[^\[\]]*)\]|\((?P<round>[^()]*)\)|\s/\s*(?P<slash>\S+))\s*")
 
 
 @dataclass(frozen=True)
@@ -95,9 +93,7 @@ def choose(path: Path, columns: Sequence[Column], wanted: str | int, what: str) 
             raise InputError(
                 f"{path}: {what} {wanted!r} is ambiguous, columns {places} have that name; give its number"
             )
-    raise InputError(
-        f"{path}: there is no {what} {wanted!r}; {nearest(wanted, [column.title for column in columns])}"
-    )
+    raise InputError(f"{path}: there is no {what} {wanted!r}; {nearest(wanted, [column.title for column in columns])}")
 
 
 def choose_pair(
@@ -119,9 +115,7 @@ def choose_pair(
         return left[0], at_time
     at = choose(path, columns, channel, "channel")
     if at == at_time:
-        raise InputError(
-            f"{path}: column {columns[at].title!r} is named as channel and as time; name two columns"
-        )
+        raise InputError(f"{path}: column {columns[at].title!r} is named as channel and as time; name two columns")
     return at, at_time
 
 

@@ -9,30 +9,34 @@ from __future__ import annotations
 
 import codecs
 import csv
+import gzip
 import io
-import re
+import zlib
 from collections.abc import Callable, Iterator, Sequence
+from contextlib import contextmanager
 from pathlib import Path
-from typing import IO, TYPE_CHECKING
+from typing import IO, TYPE_CHECKING, cast
 
 import numpy as np
 
+from springlife.duty.formats.dates import AMBIGUOUS, STAMP, stamps_of
 from springlife.duty.formats.table import Chunk, Floats, Stamps, Table, choose_pair
-from springlife.duty.sniff import HEAD, MISSING, NUMBER, STAMP, Layout, cells_of, encoding_of, layout_of
+from springlife.duty.sniff import HEAD, MISSING, NUMBER, Layout, cells_of, encoding_of, layout_of
 from springlife.errors import InputError
 
 if TYPE_CHECKING:
     from springlife.duty.record import RecordSpec
 
 BLOCK = 1 << 22  # bytes read at a time
+GZIP, ZSTANDARD = b"\x1f\x8b", b"\x28\xb5\x2f\xfd"
+OPEN_QUOTE = "a quoted cell is not closed in its row"
 SMALL = 1 << 20  # blocks up to this size are not worth loading Arrow for
-_DATE = re.compile(r"\d{1,4}[./-]\d{1,2}[./-]\d{1,4}.*|\d{1,2}:\d{2}(:\d{2}.*)?")
 
 
 def read_text(path: Path, spec: RecordSpec) -> Table:
     """Open a text table; see :data:`springlife.duty.formats.READERS`."""
-    with path.open("rb") as stream:
-        raw = stream.read(HEAD)
+    with open_bytes(path) as stream:
+        raw = _read(path, stream, HEAD)
     if not raw.strip():
         raise InputError(f"{path}: is empty; record again or correct the path")
     encoding = encoding_of(path, raw)
@@ -47,31 +51,21 @@ def read_text(path: Path, spec: RecordSpec) -> Table:
     channel, time = choose_pair(path, layout.columns, spec.channel, spec.time)
     reader = _Reader(path, layout, channel, time)
     columns = layout.columns
-    return Table(
-        columns, columns[channel], None if time is None else columns[time], reader.chunks, steps=layout.steps
-    )
+    return Table(columns, columns[channel], None if time is None else columns[time], reader.chunks, steps=layout.steps)
 
 
 def _head(path: Path, raw: bytes, encoding: str) -> str:
     """Decode the head and cut it after its last whole line."""
     whole = len(raw) < HEAD
     try:
-        text = (
-            raw[: len(raw) // 2 * 2].decode("utf-16")
-            if encoding == "utf-16"
-            else raw.decode(encoding, "ignore")
-        )
+        text = raw[: len(raw) // 2 * 2].decode("utf-16") if encoding == "utf-16" else raw.decode(encoding, "ignore")
     except UnicodeDecodeError as error:
-        raise InputError(
-            f"{path}: cannot be decoded as UTF-16 ({error.reason}); save it as CSV in UTF-8"
-        ) from error
+        raise InputError(f"{path}: cannot be decoded as UTF-16 ({error.reason}); save it as CSV in UTF-8") from error
     cut = text.rfind("\n") + 1
     if not cut and "\r" in text.rstrip():
         raise InputError(f"{path}: its lines end in bare carriage returns; save it with line feeds")
     if not cut and not whole:
-        raise InputError(
-            f"{path}: no line ends within {HEAD} bytes; save it as a table with one row a sample"
-        )
+        raise InputError(f"{path}: no line ends within {HEAD} bytes; save it as a table with one row a sample")
     return text if whole else text[:cut]
 
 
@@ -84,42 +78,40 @@ class _Reader:
 
     def chunks(self) -> Iterator[Chunk]:
         """Yield the samples block by block."""
-        for row, block in self._blocks():
+        row = 1
+        for block in self._blocks():
+            skip = self.layout.start - row
+            if skip > 0:  # what stands above the first row of numbers
+                lines = block.split(b"\n", skip)
+                row, block = row + len(lines) - 1, lines[-1]
+            if not block.strip():
+                continue
+            if len(block) > BLOCK and b"\n" not in block:
+                raise InputError(f"{self.path}, row {row}: is longer than {BLOCK} bytes; save one row a sample")
             chunk = self._fast(row, block) if len(block) > SMALL else None
-            yield chunk or self._careful(row, block)
+            if chunk is not None:
+                row += chunk.values.size
+            else:
+                chunk = self._careful(row, block)
+                row += block.count(b"\n")
+            yield chunk
 
-    def _blocks(self) -> Iterator[tuple[int, bytes]]:
-        """Yield (line number of the first row, whole rows in UTF-8 or Latin-1), no blank lines at the end."""
-        row, carry = 1, b""
-        with self.path.open("rb") as file:
+    def _blocks(self) -> Iterator[bytes]:
+        """Yield whole rows in UTF-8 or Latin-1, without the blank lines at the end of the file."""
+        carry = b""
+        with open_bytes(self.path) as file:
             for data in _as_bytes(self.path, file, self.layout.encoding):
                 data = carry + data
+                # Cut after the last row that is not blank: blank lines are gaps only when rows follow them.
                 cut = len(data[: data.rfind(b"\n") + 1].rstrip(b"\r\n\t "))
                 cut = data.find(b"\n", cut) + 1 if cut else 0
-                if not cut:
-                    self._check_length(row, data)
-                    carry = data
-                    continue
-                block, carry = data[:cut], data[cut:]
-                first, row = row, row + block.count(b"\n")
-                yield from self._from_start(first, block)
+                if not cut and len(data) > BLOCK and data.strip():
+                    cut = len(data)
+                if cut:
+                    yield data[:cut]
+                carry = data[cut:]
             if carry.strip():
-                yield from self._from_start(row, carry)
-
-    def _check_length(self, row: int, data: bytes) -> None:
-        if len(data) > BLOCK and data.strip():
-            raise InputError(
-                f"{self.path}, row {row}: is longer than {BLOCK} bytes; save the record with one row a sample"
-            )
-
-    def _from_start(self, first: int, block: bytes) -> Iterator[tuple[int, bytes]]:
-        """Drop what stands above the first row of numbers."""
-        skip = self.layout.start - first
-        if skip > 0:
-            block = block.split(b"\n", skip)[-1] if block.count(b"\n") >= skip else b""
-            first = self.layout.start
-        if block.strip():
-            yield first, block
+                yield carry
 
     def _fast(self, row: int, block: bytes) -> Chunk | None:
         """Read a block through Arrow; None when it holds anything that needs care."""
@@ -160,9 +152,11 @@ class _Reader:
         cells: list[str] = []
         clock: list[str] = []
         width, channel, time = self.layout.width, self.channel, self.time
-        reader = csv.reader(io.StringIO(text, newline=""), delimiter=self.layout.delimiter)
+        reader = csv.reader(io.StringIO(text, newline=""), delimiter=self.layout.delimiter, strict=True)
         try:
             for record in reader:
+                if reader.line_num - len(lines) > 1:
+                    raise csv.Error(OPEN_QUOTE)
                 if len(record) != width:
                     if any(cell.strip() for cell in record):
                         raise InputError(self._ragged(row + reader.line_num - 1, len(record)))
@@ -172,18 +166,15 @@ class _Reader:
                 if time is not None:
                     clock.append(record[time])
         except csv.Error as error:
-            line = row + reader.line_num - 1
-            raise InputError(
-                f"{self.path}, row {line}: cannot be split into cells ({error}); correct the row"
-            ) from error
+            reason = OPEN_QUOTE if "unexpected end" in str(error) else str(error)
+            line = row + len(lines)
+            raise InputError(f"{self.path}, row {line}: cannot be split into cells ({reason}); correct it") from error
         values = self._numbers(cells, lines, channel)
         return Chunk(values, None if time is None else self._times(clock, lines), lambda i: f"row {lines[i]}")
 
     def _ragged(self, line: int, seen: int) -> str:
         columns = self.layout.width
-        return (
-            f"{self.path}, row {line}: has {cells_of(seen)}, the rows above have {columns}; correct the row"
-        )
+        return f"{self.path}, row {line}: has {cells_of(seen)}, the rows above have {columns}; correct the row"
 
     def _numbers(self, cells: list[str], lines: list[int], column: int) -> Floats:
         """Turn cells into floats, NaN where one is missing."""
@@ -197,32 +188,28 @@ class _Reader:
                 return np.array([float(cell) for cell in cells])
             except ValueError:
                 pass  # a missing or a wrong cell: look at each
-        return np.array(
-            [self._number(cell, decimal, line, column) for cell, line in zip(cells, lines, strict=True)]
-        )
+        return np.array([self._number(cell, decimal, line, column) for cell, line in zip(cells, lines, strict=True)])
 
     def _number(self, cell: str, decimal: str, line: int, column: int) -> float:
         cell = cell.strip()
         other = "," if decimal == "." else "."
         if NUMBER.fullmatch(cell) and other not in cell:
             return float(cell.replace(",", "."))
-        if cell.casefold() in MISSING:
+        if is_missing(cell):
             return float("nan")
         remedy = "correct the cell or choose another column"
         if NUMBER.fullmatch(cell):
             sign = "comma" if self.layout.decimal == "," else "point"
             remedy = f"the table above has a decimal {sign}; save it with one decimal sign"
         title = self.layout.columns[column].title
-        raise InputError(
-            f"{self.path}, column {title!r}, row {line}: {cell[:60]!r} is not a number; {remedy}"
-        )
+        raise InputError(f"{self.path}, column {title!r}, row {line}: {cell[:60]!r} is not a number; {remedy}")
 
     def _times(self, cells: list[str], lines: list[int]) -> Floats | Stamps:
         assert self.time is not None
         if self.stamped is None:
-            first = next((cell.strip() for cell in cells if cell.strip().casefold() not in MISSING), "")
+            first = next((cell.strip() for cell in cells if not is_missing(cell)), "")
             self.stamped = STAMP.fullmatch(first) is not None
-            if not self.stamped and not NUMBER.fullmatch(first) and _DATE.fullmatch(first):
+            if not self.stamped and not NUMBER.fullmatch(first) and AMBIGUOUS.fullmatch(first):
                 title = self.layout.columns[self.time].title
                 raise InputError(
                     f"{self.path}, column {title!r}, row {lines[0]}: {first!r} can be read in several ways; "
@@ -233,53 +220,59 @@ class _Reader:
         return self._numbers(cells, lines, self.time)
 
     def _stamps(self, cells: Sequence[str | None], line: Callable[[int], int]) -> Stamps:
-        """Turn ISO 8601 date-times into instants; a zone is taken off, so its change is no jump."""
         assert self.time is not None
-        bare, zones = [], []
-        for i, cell in enumerate(cells):
-            match = STAMP.fullmatch((cell or "").strip())
-            if not match and (cell or "").strip().casefold() not in MISSING:
-                title = self.layout.columns[self.time].title
-                raise InputError(
-                    f"{self.path}, column {title!r}, row {line(i)}: {cell!r} is not a date and time such as "
-                    "2025-03-31T14:05:06.250; correct the cell"
-                )
-            bare.append(f"{match[1]}T{match[2]}".replace(",", ".") if match else "NaT")
-            zones.append(match[3] if match else None)
-        try:
-            stamps = np.array(bare, dtype="datetime64[ns]")
-        except ValueError as error:
-            title = self.layout.columns[self.time].title
-            raise InputError(
-                f"{self.path}, column {title!r}, from row {line(0)}: {error}; correct the date"
-            ) from error
-        shifts = {zone: _zone_seconds(zone) for zone in set(zones)}
-        if any(shifts.values()):
-            stamps -= np.array([shifts[zone] for zone in zones], dtype="timedelta64[s]")
-        return stamps
+        place = f"{self.path}, column {self.layout.columns[self.time].title!r}, row "
+        return stamps_of([cell or "" for cell in cells], is_missing, lambda i: f"{place}{line(i)}")
 
 
-def _zone_seconds(zone: str | None) -> int:
-    if zone in (None, "Z"):
-        return 0
-    assert zone is not None
-    digits = zone[1:].replace(":", "")
-    return (-1 if zone[0] == "-" else 1) * (int(digits[:2]) * 3600 + int(digits[2:]) * 60)
+def is_missing(cell: str) -> bool:
+    """Tell whether a cell stands for a value that is not there."""
+    return cell.strip().casefold() in MISSING
+
+
+@contextmanager
+def open_bytes(path: Path) -> Iterator[IO[bytes]]:
+    """Open a text file for reading bytes, unpacking gzip and Zstandard on the way."""
+    with path.open("rb") as plain:
+        head = plain.read(4)
+        plain.seek(0)
+        if head.startswith(GZIP):
+            with gzip.open(plain) as stream:
+                yield cast(IO[bytes], stream)
+        elif head == ZSTANDARD:
+            import pyarrow as pa
+
+            with pa.CompressedInputStream(plain, "zstd") as stream:
+                yield stream
+        else:
+            yield plain
 
 
 def _as_bytes(path: Path, file: IO[bytes], encoding: str) -> Iterator[bytes]:
     """Yield the file in pieces, in UTF-8 or Latin-1, without its byte-order mark."""
     decoder = codecs.getincrementaldecoder(encoding)() if encoding == "utf-16" else None
     first = True
-    while data := file.read(BLOCK):
+    while data := _read(path, file, BLOCK):
         if decoder:
             try:
                 data = decoder.decode(data).encode()
             except UnicodeError as error:
-                raise InputError(
-                    f"{path}: cannot be decoded as UTF-16 ({error}); save it as CSV in UTF-8"
-                ) from error
+                raise InputError(f"{path}: cannot be decoded as UTF-16 ({error}); save it as CSV in UTF-8") from error
         if first and encoding == "utf-8-sig":
             data = data.removeprefix(codecs.BOM_UTF8)
         first = False
         yield data
+
+
+def _read(path: Path, file: IO[bytes], size: int) -> bytes:
+    """Read up to ``size`` bytes, with one sentence when packed data end early or are damaged."""
+    try:
+        return bytes(file.read(size))
+    except (EOFError, zlib.error, gzip.BadGzipFile) as error:
+        raise InputError(f"{path}: the packed data are damaged or cut short ({error}); copy the file again") from error
+    except OSError as error:
+        if error.errno is None:  # from the unpacking library, not from the disk
+            raise InputError(
+                f"{path}: the packed data are damaged or cut short ({error}); copy the file again"
+            ) from error
+        raise
