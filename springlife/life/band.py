@@ -42,6 +42,8 @@ class Mover:
         word = {"criterion": "criterion", "endurance": "endurance basis", "miner": "reading of Miner's rule"}[
             self.choice
         ]
+        if _passes(self.shortest) == 0:
+            return f"the {word} moves the life most: no life at all by {low}, some by {high}"
         if math.isinf(self.factor):
             return f"the {word} moves the life most: finite by {low}, unlimited by {high}"
         return f"the {word} moves the life most: {high} gives {significant(self.factor, 2)} times the life of {low}"

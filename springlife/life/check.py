@@ -123,7 +123,7 @@ def _event_rows(event: EventReading, say: UnitSystem) -> Rows:
     kind = "force" if event.measures == "force" else "length"
     c = event.count
     rows = [
-        ("happens", f"{event.repeats} times a pass"),
+        ("happens", "once a pass" if event.repeats == 1 else f"{event.repeats} times a pass"),
         (
             "cycles",
             f"{significant(float(c.table('half').count.sum()), 6)} counted, residue of {c.residue.size} points",

@@ -206,7 +206,7 @@ def _read_record(case: Case, event: EventInput, spring: HelicalSpring, off: Beyo
     )
     recording = open_record(spec)
     slope, intercept = MEASURES[event.measures](spring, event.installed_deflection or 0.0)
-    summary, total = SummaryAccumulator(), Count()
+    summary, total = SummaryAccumulator(recording), Count()
     for block in recording.blocks():
         summary.feed(block)
         total = total + count(block, nan="split" if event.gaps == "split" else "error")

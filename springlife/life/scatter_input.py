@@ -93,9 +93,7 @@ class ScatterInput(_Table):
     def _consistent(self) -> ScatterInput:
         least, most = SAMPLES
         if not least <= self.samples <= most or self.samples & (self.samples - 1):
-            raise ValueError(
-                f"samples is {self.samples}; give a power of two from {least} to {most}, such as 16384"
-            )
+            raise ValueError(f"samples is {self.samples}; give a power of two from {least} to {most}, such as 16384")
         for name in self.off:
             if name not in VARIABLES:
                 raise ValueError(f"off names {name!r}, which is not known; {nearest(name, VARIABLES)}")

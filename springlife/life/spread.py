@@ -16,6 +16,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from springlife.life.scatter_input import VARIABLES, ScatterInput
+from springlife.spring.helical import DIAMETERS
 from springlife.strength import endurance
 from springlife.units import parse
 
@@ -92,7 +93,7 @@ def spreads_of(case: Case, spring: HelicalSpring) -> tuple[Spread, ...]:
     given = case.input.scatter
     makers = {
         "wire_diameter": lambda: _tolerance(given, "wire_diameter", "length", spring.wire_diameter, spring),
-        "coil_diameter": lambda: _tolerance(given, "coil_diameter", "length", _drawn_diameter(case), spring),
+        "coil_diameter": lambda: _tolerance(given, "coil_diameter", "length", drawn_diameter(case)[1], spring),
         "active_coils": lambda: _tolerance(given, "active_coils", "number", spring.active_coils, spring),
         "free_length": lambda: _tolerance(given, "free_length", "length", spring.free_length, spring),
         "shear_modulus": lambda: _tolerance(given, "shear_modulus", "stress", spring.G, spring),
@@ -105,11 +106,9 @@ def spreads_of(case: Case, spring: HelicalSpring) -> tuple[Spread, ...]:
     return tuple(makers[name]() for name in VARIABLES if name not in given.off)
 
 
-def _drawn_diameter(case: Case) -> float:
-    """Return the one coil diameter that the drawing gives: its tolerance is on that one."""
-    drawn = case.spring.mean_diameter or case.spring.outer_diameter or case.spring.inner_diameter
-    assert drawn is not None  # the case file has been checked
-    return drawn
+def drawn_diameter(case: Case) -> tuple[str, float]:
+    """Return name and value (m) of the one coil diameter that the drawing gives: its tolerance is on that one."""
+    return next((name, value) for name in DIAMETERS if (value := getattr(case.spring, name)) is not None)
 
 
 def _tolerance(given: ScatterInput, name: str, kind: str, centre: float, spring: HelicalSpring) -> Spread:
