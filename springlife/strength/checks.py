@@ -35,8 +35,7 @@ def _reversed_strengths(inputs: Inputs) -> dict[str, float]:
     """Zimmerli's pair, fully reversed by every criterion."""
     pair = zimmerli(inputs["shot_peened"])
     return {
-        name: float(rule.reversed_strength(pair.Ssa, pair.Ssm, *_strengths(inputs)))
-        for name, rule in CRITERIA.items()
+        name: float(rule.reversed_strength(pair.Ssa, pair.Ssm, *_strengths(inputs))) for name, rule in CRITERIA.items()
     }
 
 
@@ -52,8 +51,7 @@ def _peak_at_zero_minimum(inputs: Inputs) -> dict[str, float]:
     pair = zimmerli(inputs["shot_peened"])
     Ssu, Ssy = _strengths(inputs)
     peaks = {
-        "handbook": handbook(inputs["family"], inputs["shot_peened"]).fractions[-1]
-        * parse(inputs["Sut"], "stress")
+        "handbook": handbook(inputs["family"], inputs["shot_peened"]).fractions[-1] * parse(inputs["Sut"], "stress")
     }
     for name, rule in CRITERIA.items():
         Sse = rule.reversed_strength(pair.Ssa, pair.Ssm, Ssu, Ssy)

@@ -155,9 +155,7 @@ def two_point(Sse: float, Ssu: float, f: float | None = None, knee: float | None
     if not 0 < f <= 1:
         raise InputError(f"strength fraction f is {f:g}; it must be above 0 and at most 1")
     if not start < knee < np.inf:
-        raise InputError(
-            f"knee is {knee:g} cycles; it must be finite and past the curve's start at {start:g}"
-        )
+        raise InputError(f"knee is {knee:g} cycles; it must be finite and past the curve's start at {start:g}")
     if not 0 < Sse < f * Ssu:
         raise CriterionError(
             f"fully reversed strength Sse = {METRIC(Sse, 'stress')} is not between 0 and "
@@ -172,9 +170,7 @@ def two_point(Sse: float, Ssu: float, f: float | None = None, knee: float | None
     )
 
 
-def handbook_curve(
-    criterion: Criterion, fractions: Fractions, Sut: float, Ssu: float, Ssy: float
-) -> LifeCurve:
+def handbook_curve(criterion: Criterion, fractions: Fractions, Sut: float, Ssu: float, Ssy: float) -> LifeCurve:
     """Return the curve through the handbook's points, each converted from R = 0 by the criterion.
 
     Parameters
@@ -196,9 +192,7 @@ def handbook_curve(
     half = np.asarray(fractions.fractions) * Sut / 2
     S = criterion.reversed_strength(half, half, Ssu, Ssy)
     if not np.all(np.diff(S) < 0):
-        raise CriterionError(
-            f"{criterion.name}: the handbook's points do not fall with life once fully reversed"
-        )
+        raise CriterionError(f"{criterion.name}: the handbook's points do not fall with life once fully reversed")
     return LifeCurve(
         points=tuple(zip(fractions.cycles, (float(one) for one in S), strict=True)),
         label="the handbook's fractions of tensile strength",
@@ -262,21 +256,18 @@ def _zimmerli_curve(
         curve = two_point(Sse, Ssu, f, knee)
     except CriterionError as error:
         peening = "peened" if shot_peened else "unpeened"
-        raise CriterionError(
-            f"{criterion.name} on zimmerli {peening}: {error}; choose another criterion"
-        ) from error
+        raise CriterionError(f"{criterion.name} on zimmerli {peening}: {error}; choose another criterion") from error
     zimmerli_source = f"{pair.source} ({pair.provenance})"
-    return LifeCurve(
-        curve.points, curve.label, (zimmerli_source, *curve.sources), curve.valid_from, curve.valid_to
-    )
+    return LifeCurve(curve.points, curve.label, (zimmerli_source, *curve.sources), curve.valid_from, curve.valid_to)
 
 
 @dataclass(frozen=True)
 class CurveGroup:
-    """One curve of a curve file; ``shot_peened`` None serves both."""
+    """One curve of a curve file; ``shot_peened`` None serves both; ``scatter`` is that of log10 N."""
 
     name: str
     shot_peened: bool | None
+    scatter: float | None
     life: LifeCurve
 
 
@@ -310,9 +301,7 @@ class CurveFile:
         fitting = [group for group in self.groups if group.shot_peened in (None, shot_peened)]
         if len(fitting) != 1:
             peening = "true" if shot_peened else "false"
-            raise InputError(
-                f"{self.path}: {len(fitting)} groups are for shot_peened = {peening}; exactly one must be"
-            )
+            raise InputError(f"{self.path}: {len(fitting)} groups are for shot_peened = {peening}; exactly one must be")
         return fitting[0].life
 
 
@@ -321,7 +310,8 @@ def read_curve(path: str | Path) -> CurveFile:
 
     A group has either ``points``, a list of ``{cycles, amplitude}``, or ``line``, one table
     ``{slope, cycles, amplitude}`` for N = cycles (S/amplitude)^-slope. ``tested`` = ``{shortest, longest}``
-    gives the lives that tests reached; a line ends there, its knee at the longest.
+    gives the lives that tests reached; a line ends there, its knee at the longest. ``shot_peened`` says which
+    springs a group is for, ``scatter`` the standard deviation of log10 N.
 
     Raises
     ------
@@ -357,7 +347,7 @@ def read_curve(path: str | Path) -> CurveFile:
 
 
 def _group(table: Table, path: Path, source: str) -> CurveGroup:
-    table.only("name", "shot_peened", "points", "line", "tested")
+    table.only("name", "shot_peened", "scatter", "points", "line", "tested")
     if ("points" in table.raw) == ("line" in table.raw):
         raise InputError(f"{table.where}give exactly one of points and line")
     if "points" in table.raw:
@@ -375,8 +365,9 @@ def _group(table: Table, path: Path, source: str) -> CurveGroup:
         k, N, S = line.positive("slope"), line.positive("cycles"), line.stress("amplitude")
         points = tuple((life, S * (N / life) ** (1 / k)) for life in (first, last))
     peened = table.get("shot_peened", bool) if "shot_peened" in table.raw else None
+    spread = table.positive("scatter") if "scatter" in table.raw else None
     name = table.get("name", str)
-    return CurveGroup(name, peened, LifeCurve(points, f"{path.name}, {name}", (source,), first, last))
+    return CurveGroup(name, peened, spread, LifeCurve(points, f"{path.name}, {name}", (source,), first, last))
 
 
 def _tested(table: Table) -> tuple[float, float]:

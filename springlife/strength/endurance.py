@@ -121,8 +121,7 @@ def handbook(family: str | None, shot_peened: bool) -> Fractions:
     if family is None:
         covered = "; ".join(entry["wires"] for entry in families.values())
         raise InputError(
-            f"endurance 'handbook' has fractions for {covered}, none for this wire; "
-            "use 'zimmerli' or a curve file"
+            f"endurance 'handbook' has fractions for {covered}, none for this wire; use 'zimmerli' or a curve file"
         )
     if family not in families:
         raise InputError(f"handbook family {family!r} is not known; {nearest(family, families)}")
