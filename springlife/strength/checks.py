@@ -59,9 +59,30 @@ def _peak_at_zero_minimum(inputs: Inputs) -> dict[str, float]:
     return peaks
 
 
+def _basquin(inputs: Inputs) -> dict[str, float]:
+    """A line through complete data: intercept, slope and unbiased variance; amplitudes in any one unit."""
+    from springlife.strength.fit import fit_tests
+
+    amplitude, cycles = inputs["amplitude"], inputs["cycles"]
+    n = len(cycles)
+    rule = CRITERIA["sines"]
+    (line,) = fit_tests(amplitude, [0.0] * n, cycles, [True] * n, criterion=rule, Ssu=1.0, Ssy=1.0).lines
+    return {"A": line.A, "B": line.B, "variance": line.s**2 * n / (n - 2)}
+
+
+def _tolerance_factor(inputs: Inputs) -> dict[str, float]:
+    """One-sided normal tolerance factor of a sample of n."""
+    from springlife.strength.line import tolerance_factor
+
+    n = inputs["n"]
+    return {"k": tolerance_factor(inputs["reliability"], inputs["confidence"], n - 1, 1 / n)}
+
+
 METHODS: dict[str, Callable[[Inputs], dict[str, float]]] = {
     "fatigue factor on the load line": _load_line,
     "fully reversed strength": _reversed_strengths,
     "design amplitude": _design_amplitude,
     "peak stress at R = 0": _peak_at_zero_minimum,
+    "line through complete tests": _basquin,
+    "one-sided tolerance factor": _tolerance_factor,
 }
