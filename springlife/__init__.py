@@ -5,8 +5,9 @@ The public names load their modules on first use, so importing the package costs
 
 from __future__ import annotations
 
-import importlib
-from typing import Any
+TYPE_CHECKING = False  # typing itself costs as much as the rest of this file
+if TYPE_CHECKING:
+    from typing import Any
 
 __version__ = "0.1.0"
 
@@ -17,6 +18,7 @@ _PUBLIC = {
     "Count": "springlife.duty.counting",
     "load_case": "springlife.life.case",
     "assess": "springlife.life.assess",
+    "compare": "springlife.life.compare",
     "SpringlifeError": "springlife.errors",
 }
 
@@ -27,6 +29,8 @@ def __getattr__(name: str) -> Any:
     """Import the module that holds a public name when the name is first asked for."""
     if name not in _PUBLIC:
         raise AttributeError(f"module 'springlife' has no attribute {name!r}")
+    import importlib
+
     return getattr(importlib.import_module(_PUBLIC[name]), name)
 
 

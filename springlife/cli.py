@@ -8,12 +8,14 @@ from __future__ import annotations
 
 import argparse
 import sys
-from collections.abc import Callable, Sequence
-from pathlib import Path
-from typing import Any, NoReturn
 
 from springlife import __version__
 from springlife.errors import InputError, SpringlifeError
+
+TYPE_CHECKING = False  # see springlife/__init__.py: --help must stay quick
+if TYPE_CHECKING:
+    from collections.abc import Callable, Sequence
+    from typing import Any, NoReturn
 
 EXIT = {"meets": 0, "falls short": 1, "withheld": 3}
 CAUTION = (
@@ -66,9 +68,10 @@ def _parser() -> argparse.ArgumentParser:
     _case_command(commands, "check", _check, "read everything a case names, judge nothing")
     _compare_command(commands)
     _count_command(commands)
+    _scatter_command(commands)
     grades = commands.add_parser("grades", help="list the wire grades with their strengths", epilog=CAUTION)
     grades.add_argument("grade", nargs="?", help="one grade in full")
-    grades.add_argument("--file", metavar="GRADES.toml", type=Path, help="a grades file of your own")
+    grades.add_argument("--file", metavar="GRADES.toml", help="a grades file of your own")
     _finish(grades, _grades)
     verify = commands.add_parser("verify", help="recompute the published examples on this machine")
     _finish(verify, _verify)
@@ -77,7 +80,7 @@ def _parser() -> argparse.ArgumentParser:
 
 def _case_command(commands: Any, name: str, run: Callable[[argparse.Namespace], int], text: str) -> Any:
     parser = commands.add_parser(name, help=text, description=text[0].upper() + text[1:] + ".", epilog=CAUTION)
-    parser.add_argument("case", metavar="CASE", type=Path, help="the case file (TOML)")
+    parser.add_argument("case", metavar="CASE", help="the case file (TOML)")
     _finish(parser, run)
     return parser
 
@@ -100,7 +103,7 @@ def _compare_command(commands: Any) -> None:
 def _count_command(commands: Any) -> None:
     text = "count the rainflow cycles of one record"
     parser = commands.add_parser("count", help=text, description=text[0].upper() + text[1:] + ".", epilog=CAUTION)
-    parser.add_argument("record", metavar="RECORD", type=Path, help="the record, such as ride.csv")
+    parser.add_argument("record", metavar="RECORD", help="the record, such as ride.csv")
     parser.add_argument("--channel", help="column by name, or by number counted from 1")
     parser.add_argument("--time", help="time column by name or number")
     parser.add_argument("--time-unit", metavar="UNIT", help="unit of the time column, such as ms")
@@ -161,16 +164,39 @@ def _compare(arguments: argparse.Namespace) -> int:
     return EXIT[result.options[0].assessment.verdict]
 
 
+def _scatter_command(commands: Any) -> None:
+    parser = _case_command(commands, "scatter", _scatter, "draw many springs: B lives, failures, what matters most")
+    parser.add_argument(
+        "--samples", type=int, metavar="N", help="springs to draw, a power of two (default: the case's)"
+    )
+    parser.add_argument("--seed", type=int, metavar="N", help="seed of the draw (default: the case's)")
+
+
+def _scatter(arguments: argparse.Namespace) -> int:
+    from springlife.life.scatter import scatter
+
+    result = scatter(arguments.case, samples=arguments.samples, seed=arguments.seed)
+    if arguments.json:
+        _print_json(result.to_dict())
+    else:
+        from springlife.report.scatter_text import print_scatter
+
+        print_scatter(result, CAUTION)
+    return 0
+
+
 def _number_or_name(text: str | None) -> str | int | None:
     return int(text) if text is not None and text.isdigit() else text
 
 
 def _count(arguments: argparse.Namespace) -> int:
+    from pathlib import Path
+
     from springlife import units
     from springlife.life.tally import tally_record
 
     result = tally_record(
-        arguments.record,
+        Path(arguments.record),
         channel=_number_or_name(arguments.channel),
         time=_number_or_name(arguments.time),
         time_unit=arguments.time_unit,

@@ -6,8 +6,9 @@ Each class is also a builtin error, so ``except ValueError`` keeps working.
 
 from __future__ import annotations
 
-import difflib
-from collections.abc import Iterable
+TYPE_CHECKING = False  # see springlife/__init__.py
+if TYPE_CHECKING:
+    from collections.abc import Iterable
 
 
 class SpringlifeError(Exception):
@@ -40,6 +41,8 @@ class MissingExtraError(SpringlifeError, ImportError):
 
 def nearest(name: str, valid: Iterable[str]) -> str:
     """Say which valid name is closest, then list them all, as the tail of a message."""
+    import difflib
+
     names = [str(v) for v in valid]
     close = difflib.get_close_matches(str(name), names, n=1, cutoff=0.6)
     listing = ", ".join(names)
