@@ -163,8 +163,7 @@ class Grade:
             ],
             "tensile_bounds_Pa": self.tensile_bounds,
             "moduli": [
-                {"to_m": s.high if s.high < inf else None, "E_Pa": s.E, "G_Pa": s.G}
-                for s in self.moduli_by_size
+                {"to_m": s.high if s.high < inf else None, "E_Pa": s.E, "G_Pa": s.G} for s in self.moduli_by_size
             ],
             "static_before": self.static_before,
             "static_after": self.static_after,
@@ -228,9 +227,7 @@ def grades(grade_file: str | Path | None = None) -> dict[str, Grade]:
     added = _read(text, str(path))
     for name in added:
         if _key(name) in {_key(ours) for ours in known}:
-            raise InputError(
-                f"{path}: grade {name!r} is in the package already; give yours a name of its own"
-            )
+            raise InputError(f"{path}: grade {name!r} is in the package already; give yours a name of its own")
     return known | added
 
 
@@ -257,9 +254,5 @@ def _both(length: float) -> str:
 
 def _tensile_line(segment: Tensile) -> str:
     low, high = segment(segment.low), segment(segment.high)
-    ends = (
-        f"{show(low, 'MPa', 'stress')} to {show(high, 'MPa', 'stress')}"
-        if segment.m
-        else show(low, "MPa", "stress")
-    )
+    ends = f"{show(low, 'MPa', 'stress')} to {show(high, 'MPa', 'stress')}" if segment.m else show(low, "MPa", "stress")
     return f"Sut {ends} from {_both(segment.low)} to {_both(segment.high)} (exponent {segment.m:g})"

@@ -123,7 +123,7 @@ def _grade(name: str, place: _Place) -> Grade:
         static_after=_after(static, before),
         greatest_temperature=place.table("temperature").quantity("greatest", "temperature"),
         density=place.table("density").quantity("value", "density"),
-        relative_cost=groups["cost"].number("relative", 0.0, inf) if "cost" in groups else None,
+        relative_cost=groups["cost"].number("relative", 0.01, 1000.0) if "cost" in groups else None,
         ferrous=place.flag("ferrous"),
         stainless=place.flag("stainless", False),
         cyclic_family=place.text("cyclic_family") if "cyclic_family" in place.raw else None,
@@ -149,9 +149,7 @@ def _tensile(place: _Place) -> tuple[tuple[Tensile, ...], tuple[float, float] | 
     value = given.quantity("value", "stress")
     if ("min" in given.raw) != ("max" in given.raw):
         raise InputError(f"{given.where[:-1]}: give both min and max, or neither")
-    bounds = (
-        (given.quantity("min", "stress"), given.quantity("max", "stress")) if "min" in given.raw else None
-    )
+    bounds = (given.quantity("min", "stress"), given.quantity("max", "stress")) if "min" in given.raw else None
     if bounds and not bounds[0] <= value <= bounds[1]:
         raise given.wrong("value", f"it must lie from min {given.raw['min']!r} to max {given.raw['max']!r}")
     return (Tensile(value, 1.0, 0.0, 0.0, inf),), bounds
@@ -195,9 +193,7 @@ def _moduli(group: _Place) -> Iterator[Moduli]:
 
 
 def _after(static: _Place, before: float) -> tuple[float, float]:
-    fault = static.wrong(
-        "after", f"write its lower and upper end, such as [0.65, 0.75], from {before:g} to 1"
-    )
+    fault = static.wrong("after", f"write its lower and upper end, such as [0.65, 0.75], from {before:g} to 1")
     ends = static.raw.get("after")
     if not isinstance(ends, list) or len(ends) != 2:
         raise fault

@@ -207,9 +207,7 @@ class HelicalSpring:
                 f"free length {_mm(self.free_length)} is not above the solid length {_mm(self.solid_length)} "
                 f"of {self.total_coils:g} coils; check the free length, coils and wire"
             )
-        elif self.inner_diameter > 0 and not (
-            0 < self.calculated_rate < math.inf and 0 < self.mass < math.inf
-        ):
+        elif self.inner_diameter > 0 and not (0 < self.calculated_rate < math.inf and 0 < self.mass < math.inf):
             yield (
                 f"the rate comes out as {self.calculated_rate:g} N/m and the mass as {self.mass:g} kg; "
                 "check the units of the lengths"
