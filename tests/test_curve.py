@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from importlib.resources import files
 from pathlib import Path
 from typing import Any
 
@@ -99,9 +100,7 @@ def test_haibach_is_continuous_at_the_knee(Ssu: float, e: float) -> None:
 def test_under_the_knee_the_readings_are_ordered(Ssu: float, e: float, x: float) -> None:
     curve = two_point(0.9 * Ssu * e, Ssu)
     under = x * curve.strength_at_knee
-    elementary, haibach, original = (
-        curve.cycles(under, miner) for miner in ("elementary", "haibach", "original")
-    )
+    elementary, haibach, original = (curve.cycles(under, miner) for miner in ("elementary", "haibach", "original"))
     assert curve.knee < elementary < original == np.inf
     # 2k - 1 is steeper than k only for k > 1; wire is far above.
     assert (haibach > elementary) == (curve.slope > 1) or haibach == np.inf
@@ -194,9 +193,7 @@ def test_settings_reach_the_curve() -> None:
 
 
 def test_an_unknown_basis_lists_the_known_ones() -> None:
-    with pytest.raises(
-        InputError, match=r"endurance 'zimerli' is not known; did you mean 'zimmerli'.*\.toml"
-    ):
+    with pytest.raises(InputError, match=r"endurance 'zimerli' is not known; did you mean 'zimmerli'.*\.toml"):
         endurance_curve("zimerli", criterion("gerber"), **WIRE)
 
 
@@ -321,3 +318,11 @@ def test_curve_files_that_cannot_be_read(tmp_path: Path) -> None:
         read_curve(tmp_path / "bytes.toml")
     with pytest.raises(InputError, match="group must be a list of one or more tables"):
         read_curve(curve_file(tmp_path, CURVE_FILE.split("[[group]]")[0] + "group = []\n"))
+
+
+def test_the_manuals_curve_file_is_read(tmp_path: Path) -> None:
+    manual = files("springlife").joinpath("manual/strength.md").read_text(encoding="utf-8")
+    example = manual.split("```toml\n")[1].split("```")[0]
+    peened, unpeened = read_curve(curve_file(tmp_path, example)).groups
+    assert (peened.scatter, unpeened.scatter) == (0.18, None)
+    assert unpeened.life.cycles(390 * MPa) == pytest.approx(1e6)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+from importlib.resources import files
 from pathlib import Path
 from typing import Any
 
@@ -440,3 +441,11 @@ def test_tables_that_cannot_be_read(tmp_path: Path) -> None:
         read_tests(tmp_path / "none.csv")
     with pytest.raises(FileError, match="cannot be read"):
         read_tests(tmp_path)
+
+
+def test_the_manuals_table_is_read(tmp_path: Path) -> None:
+    manual = files("springlife").joinpath("manual/strength.md").read_text(encoding="utf-8")
+    example = "stress_amplitude" + manual.split("```\nstress_amplitude")[1].split("```")[0]
+    tests = read_tests(table(tmp_path, example))
+    assert tests.failed.tolist() == [True, False]
+    assert tests.group == ("peened", "peened")
