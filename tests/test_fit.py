@@ -96,6 +96,19 @@ def test_intervals_of_complete_data_are_the_likelihoods_own() -> None:
     assert observed.interval(quantile((1.0,), 0.5), 0.9) == pytest.approx((y.mean() - half, y.mean() + half), abs=1e-4)
 
 
+def test_an_interval_far_out_still_ends() -> None:
+    # The same derivation at a confidence of 1 - 1e-6 (z = 4.8916) with four results: 20 scatters wide.
+    y = np.array([0.1, -0.4, 0.3, 0.2])
+    half = np.std(y) * np.sqrt(np.exp(4.8916385**2 / 4) - 1)
+    low, high = Censored(np.ones((4, 1)), y, np.ones(4, bool)).interval(coefficient(0, 1), 1 - 1e-6)
+    assert (low, high) == pytest.approx((y.mean() - half, y.mean() + half), rel=1e-3)
+
+
+def test_results_without_scatter_have_no_likeliest_scatter() -> None:
+    with pytest.raises(InputError, match="the likelihood has no maximum"):
+        _ = Censored(np.ones((4, 1)), np.zeros(4), np.ones(4, bool)).theta
+
+
 def test_the_profile_at_the_ends_of_an_interval_has_lost_what_the_confidence_asks() -> None:
     S, N, failed = simulated(np.random.default_rng(8), 5, stop=1e6)
     observed = fitted(S, N, failed).lines[0].observed

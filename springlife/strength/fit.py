@@ -46,7 +46,7 @@ class Fit:
     notes: tuple[str, ...]
 
     def to_dict(self) -> dict[str, Any]:
-        """Give everything for JSON; intervals at the usual confidence, None where the data set no end."""
+        """Give everything for JSON; intervals at the usual confidence."""
         return {
             "criterion": self.criterion,
             "confidence": CONFIDENCE,
@@ -63,9 +63,9 @@ def _line_dict(line: Line) -> dict[str, Any]:
         "A_Pa": line.A,
         "B": line.B,
         "slope": line.slope,
-        "slope_interval": _ends(line.slope_interval()),
+        "slope_interval": list(line.slope_interval()),
         "scatter_log10": line.s,
-        "scatter_interval": _ends(line.scatter_interval()),
+        "scatter_interval": list(line.scatter_interval()),
         "failures": line.failures,
         "run_outs": line.run_outs,
         "amplitudes_tested_Pa": list(line.amplitudes),
@@ -75,10 +75,6 @@ def _line_dict(line: Line) -> dict[str, Any]:
         "fatigue_limit_interval_Pa": [limit.low, limit.high],
         "fatigue_limit_p_value": limit.p_value,
     }
-
-
-def _ends(interval: tuple[float, float]) -> list[float | None]:
-    return [end if np.isfinite(end) else None for end in interval]
 
 
 def fit_tests(

@@ -23,7 +23,6 @@ from springlife.errors import InputError
 from springlife.strength.criteria import Floats
 
 _HALF_LOG_TWO_PI = 0.5 * np.log(2 * np.pi)
-_FARTHEST = 60  # standard errors searched for the end of an interval before it is called unbounded
 
 
 @dataclass(frozen=True)
@@ -126,7 +125,7 @@ class Censored:
         return self._maximise(W @ free, w0 + W @ base, t @ free, t0 + float(t @ base), start)[1]
 
     def bound(self, of: Quantity, side: int, confidence: float) -> float:
-        """Return the one-sided profile-likelihood bound of a quantity; infinite when the data set none.
+        """Return the one-sided profile-likelihood bound of a quantity.
 
         ``side`` is -1 for a lower bound and +1 for an upper one. The bound is where the signed root of twice
         the loss in log-likelihood reaches the normal quantile of ``confidence``.
@@ -143,8 +142,6 @@ class Censored:
         near, far = 0.0, target
         while excess(far) < 0:
             near, far = far, 1.5 * far
-            if far > _FARTHEST:
-                return side * np.inf
         return centre + side * step * float(brentq(excess, near, far, xtol=1e-4, rtol=1e-6))
 
     def interval(self, of: Quantity, confidence: float) -> tuple[float, float]:
