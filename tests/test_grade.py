@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from importlib.resources import files
 from pathlib import Path
 
 import pytest
@@ -222,6 +223,12 @@ def test_a_file_that_is_not_there_or_not_text(tmp_path: Path) -> None:
     (tmp_path / "bytes.toml").write_bytes(b"\xff\xfe")
     with pytest.raises(InputError, match="byte 0 is not UTF-8"):
         grades(tmp_path / "bytes.toml")
+
+
+def test_the_manuals_grades_file_is_read(tmp_path: Path) -> None:
+    manual = files("springlife").joinpath("manual/spring.md").read_text(encoding="utf-8")
+    example = manual.split("```toml\n")[1].split("```")[0]
+    assert grade("X70", own_file(tmp_path, example)).density == 7850
 
 
 def test_a_changed_file_is_read_anew(tmp_path: Path) -> None:
