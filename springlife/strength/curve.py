@@ -83,6 +83,7 @@ class LifeCurve:
     """Points (N, S) with N rising and S falling, S in Pa fully reversed; the last point is the knee.
 
     ``label`` completes "lives follow ..."; lives outside ``valid_from`` to ``valid_to`` are extrapolated.
+    ``reliability``, ``confidence`` and ``scatter`` (of log10 N) are None where the source does not state them.
     """
 
     points: tuple[tuple[float, float], ...]
@@ -90,6 +91,9 @@ class LifeCurve:
     sources: tuple[str, ...]
     valid_from: float
     valid_to: float
+    reliability: float | None = None
+    confidence: float | None = None
+    scatter: float | None = None
 
     def __post_init__(self) -> None:
         """Refuse points that are not a falling curve."""
@@ -263,11 +267,10 @@ def _zimmerli_curve(
 
 @dataclass(frozen=True)
 class CurveGroup:
-    """One curve of a curve file; ``shot_peened`` None serves both; ``scatter`` is that of log10 N."""
+    """One curve of a curve file; ``shot_peened`` None serves both."""
 
     name: str
     shot_peened: bool | None
-    scatter: float | None
     life: LifeCurve
 
 
@@ -279,8 +282,6 @@ class CurveFile:
     title: str
     source: str
     criterion: str
-    reliability: float | None
-    confidence: float | None
     groups: tuple[CurveGroup, ...]
 
     def curve(self, criterion: Criterion, shot_peened: bool) -> LifeCurve:
@@ -334,19 +335,16 @@ def read_curve(path: str | Path) -> CurveFile:
     name = top.get("criterion", str)
     if name not in CRITERIA:
         raise InputError(f"{path}: criterion {name!r} is not known; {nearest(name, CRITERIA)}")
-    source = top.get("source", str)
     return CurveFile(
         path=path,
         title=top.get("title", str),
-        source=source,
+        source=top.get("source", str),
         criterion=name,
-        reliability=top.share("reliability") if "reliability" in raw else None,
-        confidence=top.share("confidence") if "confidence" in raw else None,
-        groups=tuple(_group(group, path, source) for group in top.tables("group")),
+        groups=tuple(_group(group, path, top) for group in top.tables("group")),
     )
 
 
-def _group(table: Table, path: Path, source: str) -> CurveGroup:
+def _group(table: Table, path: Path, top: Table) -> CurveGroup:
     table.only("name", "shot_peened", "scatter", "points", "line", "tested")
     if ("points" in table.raw) == ("line" in table.raw):
         raise InputError(f"{table.where}give exactly one of points and line")
@@ -365,9 +363,18 @@ def _group(table: Table, path: Path, source: str) -> CurveGroup:
         k, N, S = line.positive("slope"), line.positive("cycles"), line.stress("amplitude")
         points = tuple((life, S * (N / life) ** (1 / k)) for life in (first, last))
     peened = table.get("shot_peened", bool) if "shot_peened" in table.raw else None
-    spread = table.positive("scatter") if "scatter" in table.raw else None
     name = table.get("name", str)
-    return CurveGroup(name, peened, spread, LifeCurve(points, f"{path.name}, {name}", (source,), first, last))
+    life = LifeCurve(
+        points=points,
+        label=f"{path.name}, {name}",
+        sources=(top.get("source", str),),
+        valid_from=first,
+        valid_to=last,
+        reliability=top.share("reliability") if "reliability" in top.raw else None,
+        confidence=top.share("confidence") if "confidence" in top.raw else None,
+        scatter=table.positive("scatter") if "scatter" in table.raw else None,
+    )
+    return CurveGroup(name, peened, life)
 
 
 def _tested(table: Table) -> tuple[float, float]:
