@@ -96,9 +96,7 @@ def tolerance(printed: str) -> float:
     try:
         exponent = Decimal(printed.split()[0]).as_tuple().exponent
     except InvalidOperation as error:
-        raise InputError(
-            f"{printed!r} hides its last digit; write a decimal number, a space, the unit"
-        ) from error
+        raise InputError(f"{printed!r} hides its last digit; write a decimal number, a space, the unit") from error
     return float(Decimal(5).scaleb(int(exponent) - 1))
 
 
@@ -119,19 +117,13 @@ def _check(entry: dict[str, Any], where: str) -> Check:
         if key not in entry:
             raise InputError(f"{where}{key} is missing; add it")
     if entry["provenance"] not in PROVENANCES:
-        raise InputError(
-            f"{where}provenance {entry['provenance']!r}: {nearest(entry['provenance'], PROVENANCES)}"
-        )
+        raise InputError(f"{where}provenance {entry['provenance']!r}: {nearest(entry['provenance'], PROVENANCES)}")
     wider = entry.get("tolerance", {})
     if wider and not entry.get("tolerance_reason"):
-        raise InputError(
-            f"{where}tolerance needs a tolerance_reason; say why half of the last digit is not enough"
-        )
+        raise InputError(f"{where}tolerance needs a tolerance_reason; say why half of the last digit is not enough")
     for name in wider:
         if name not in entry["printed"]:
-            raise InputError(
-                f"{where}tolerance.{name} belongs to no answer; {nearest(name, entry['printed'])}"
-            )
+            raise InputError(f"{where}tolerance.{name} belongs to no answer; {nearest(name, entry['printed'])}")
     answers = tuple(
         Answer(name, text, float(wider.get(name, tolerance(text)))) for name, text in entry["printed"].items()
     )

@@ -67,7 +67,7 @@ def test_the_grades_of_the_method_are_all_there() -> None:
 
 
 def test_an_unknown_grade_names_the_nearest_and_lists_all() -> None:
-    with pytest.raises(InputError, match="'A4011' is not known; did you mean 'A401'.*A228.*B159"):
+    with pytest.raises(InputError, match=r"'A4011' is not known; did you mean 'A401'.*A228.*B159"):
         grade("A4011")
 
 
