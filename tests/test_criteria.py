@@ -95,9 +95,7 @@ def test_every_stress_scaled_scales_the_result(
 
 @each
 @given(ultimate, part, part, part)
-def test_factor_one_lies_on_the_allowable_line(
-    rule: Criterion, Ssu: float, y: float, e: float, m: float
-) -> None:
+def test_factor_one_lies_on_the_allowable_line(rule: Criterion, Ssu: float, y: float, e: float, m: float) -> None:
     Ssu, Ssy, Sse = strengths(Ssu, y, e)
     tau_m = m * limit(rule, Ssu, Ssy)
     tau_a = rule.allowable(tau_m, Sse, Ssu, Ssy)

@@ -41,9 +41,7 @@ def test_zimmerli_pair(shot_peened: bool, Ssa: float, Ssm: float, printed_MPa: t
         ("alloy", True, 0.49, 0.47, 0.46),
     ],
 )
-def test_handbook_fractions(
-    family: str, shot_peened: bool, at_1e5: float, at_1e6: float, at_1e7: float
-) -> None:
+def test_handbook_fractions(family: str, shot_peened: bool, at_1e5: float, at_1e6: float, at_1e7: float) -> None:
     found = handbook(family, shot_peened)
     assert dict(zip(found.cycles, found.fractions, strict=True)) == {1e5: at_1e5, 1e6: at_1e6, 1e7: at_1e7}
     assert found.provenance == "memory"
