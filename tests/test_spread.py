@@ -62,9 +62,7 @@ TENSILE_MM = {
 }  # fmt: skip
 
 
-@pytest.mark.parametrize(
-    ("grade", "inches", "half"), [(grade, *row) for grade, rows in WIRE.items() for row in rows]
-)
+@pytest.mark.parametrize(("grade", "inches", "half"), [(grade, *row) for grade, rows in WIRE.items() for row in rows])
 def test_wire_diameter_rows(grade: str, inches: float, half: float | None) -> None:
     found, table = wire_half_range(grade, inches * INCH)
     assert found == (None if half is None else pytest.approx(half * INCH))
@@ -107,11 +105,7 @@ def test_outside_the_coil_table_there_is_no_value(place: tuple[float, float]) ->
 def test_every_default_names_source_and_provenance() -> None:
     def entries(node: object) -> list[dict[str, object]]:
         if isinstance(node, list):
-            return (
-                [found for one in node for found in entries(one)]
-                if node and isinstance(node[0], dict)
-                else []
-            )
+            return [found for one in node for found in entries(one)] if node and isinstance(node[0], dict) else []
         if not isinstance(node, dict):
             return []
         inner = [found for one in node.values() for found in entries(one)]
@@ -154,7 +148,7 @@ def test_a_factor_is_lognormal_about_its_median() -> None:
         ('off = ["life"]\nlife = { log10_sd = 0.1 }', "life is switched off and given a distribution"),
         ("samples = 1000", "samples is 1000; give a power of two from 512 to 1048576"),
         ("samples = 256", "samples is 256; give a power of two"),
-        ("seed = -1", "scatter.seed: -1 cannot be used"),
+        ("seed = -1", "scatter: seed is -1; give a whole number from 0 up"),
         ('strengths_are = "B50"', "scatter.strengths_are: 'B50' is not known"),
     ],
 )  # fmt: skip

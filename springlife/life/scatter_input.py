@@ -86,7 +86,7 @@ class ScatterInput(_Table):
     allowed_damage: FactorScatter | None = None
     off: list[str] = []
     samples: int = 1 << 14
-    seed: Annotated[int, Field(ge=0)] = 1
+    seed: int = 1
     strengths_are: Literal["median", "B10"] = "median"
 
     @model_validator(mode="after")
@@ -94,6 +94,8 @@ class ScatterInput(_Table):
         least, most = SAMPLES
         if not least <= self.samples <= most or self.samples & (self.samples - 1):
             raise ValueError(f"samples is {self.samples}; give a power of two from {least} to {most}, such as 16384")
+        if self.seed < 0:
+            raise ValueError(f"seed is {self.seed}; give a whole number from 0 up")
         for name in self.off:
             if name not in VARIABLES:
                 raise ValueError(f"off names {name!r}, which is not known; {nearest(name, VARIABLES)}")
