@@ -65,6 +65,11 @@ def time_unit(spec: RecordSpec, table: Table) -> tuple[float, str | None]:
 
 def stated_rate(spec: RecordSpec, table: Table) -> float | None:
     """Return the rate that the case or the file states; both must agree."""
+    if spec.sample_rate and table.time:
+        raise InputError(
+            f"{spec.path}, column {table.channel.title!r}: has its own times; leave out sample_rate, here "
+            f"{spec.sample_rate:g} Hz"
+        )
     if spec.sample_rate and table.sample_rate and not np.isclose(spec.sample_rate, table.sample_rate, rtol=1e-6):
         raise InputError(
             f"{spec.path}: the sample rate is {table.sample_rate:g} Hz in the file and {spec.sample_rate:g} "

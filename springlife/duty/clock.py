@@ -52,6 +52,7 @@ class Clock:
             # Nothing is known about the order around a missing time: break there and go on with the rest.
             found = [Break(int(i), "missing", "the time is missing") for i in missing]
             kept = np.flatnonzero(~np.isnan(times))
+            self.breaks += missing.size
             found += [Break(int(kept[b.index]), b.kind, b.what) for b in self.feed(times[kept])]
             return sorted(found, key=lambda b: b.index)
         if not times.size:

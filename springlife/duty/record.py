@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass
 from functools import cached_property
 from pathlib import Path
@@ -21,6 +22,7 @@ from springlife.duty.calibration import channel_unit, stated_rate, time_unit
 from springlife.duty.clock import Break, Clock
 from springlife.duty.formats import open_table
 from springlife.duty.formats.table import Chunk, Floats, Stamps, Table
+from springlife.duty.pieces import files_of, open_pieces
 from springlife.duty.summary import RecordSummary, SummaryAccumulator
 from springlife.errors import FileError, GapError, InputError
 from springlife.units import significant
@@ -38,7 +40,8 @@ class RecordSpec:
     Parameters
     ----------
     path : Path
-        The file.
+        The file; or a folder, or a pattern with * and ?, whose files in natural order of their names are one
+        record in pieces.
     channel : str or int, optional
         Name, or number counted from 1; may be left out when the file has one column besides the time.
     time : str or int, optional
@@ -59,6 +62,9 @@ class RecordSpec:
         A missing value, a missing time, a time that goes back or jumps, a rate that changes: an error, or the
         places where the record is cut into pieces. A repeated time is an error too; with "split" it is
         reported, because it leaves the order of the samples as it is.
+    between : {"join", "split"}
+        What lies between the pieces when ``path`` means several files: they follow one another as if recorded
+        without a pause, or the record is cut there. Times then count recorded time.
     """
 
     path: Path
@@ -72,6 +78,7 @@ class RecordSpec:
     offset: float = 0.0
     invert: bool = False
     gaps: Literal["error", "split"] = "error"
+    between: Literal["join", "split"] = "join"
 
     def __post_init__(self) -> None:
         """Check what can be checked without the file."""
@@ -83,8 +90,9 @@ class RecordSpec:
             raise InputError(
                 f"{self.path}: scale {self.scale:g} and offset {self.offset:g} must be finite, scale not zero"
             )
-        if self.gaps not in ("error", "split"):
-            raise InputError(f"{self.path}: gaps is {self.gaps!r}; write 'error' or 'split'")
+        for name, valid in (("gaps", ("error", "split")), ("between", ("join", "split"))):
+            if getattr(self, name) not in valid:
+                raise InputError(f"{self.path}: {name} is {getattr(self, name)!r}; write {valid[0]!r} or {valid[1]!r}")
         if self.kind is not None and self.kind not in units.KINDS:
             raise InputError(f"{self.path}: kind is {self.kind!r}; write one of {', '.join(units.KINDS)}")
 
@@ -97,9 +105,9 @@ class Recording:
     ``blocks()`` gave last, NaN at a separator, or None when the record has no time.
     """
 
-    def __init__(self, spec: RecordSpec, table: Table) -> None:
-        """Join what was asked and what the file holds; use :func:`open_record`."""
-        self.spec, self.path, self._table = spec, spec.path, table
+    def __init__(self, spec: RecordSpec, files: tuple[Path, ...], table: Table) -> None:
+        """Join what was asked and what the files hold; use :func:`open_record`."""
+        self.spec, self.path, self._files, self._table = spec, spec.path, files, table
         self.channel = table.channel.title
         self.columns = tuple(column.title for column in table.columns)
         self.unit, self._line, self._steps = channel_unit(spec, table)
@@ -112,6 +120,7 @@ class Recording:
         self._samples = 0
         self._missing = 0  # runs of missing values
         self._after_missing = False
+        self._shift = 0.0  # s, from the times of this piece to recorded time
         self._origin: np.datetime64 | None = None
         self._origin_step = ""
         self._first_repeat = ""
@@ -119,10 +128,21 @@ class Recording:
         self.block_times: Floats | None = None
 
     @cached_property
+    def pieces(self) -> tuple[tuple[Path, str], ...]:
+        """The files read and the SHA-256 of each."""
+        found = []
+        for path in self._files:
+            with path.open("rb") as file:
+                found.append((path, hashlib.file_digest(file, "sha256").hexdigest()))
+        return tuple(found)
+
+    @property
     def sha256(self) -> str:
-        """SHA-256 of the file's bytes."""
-        with self.path.open("rb") as file:
-            return hashlib.file_digest(file, "sha256").hexdigest()
+        """SHA-256 of the file; of several, that of the list "digest  name", one line a piece."""
+        if len(self.pieces) == 1:
+            return self.pieces[0][1]
+        text = "".join(f"{digest}  {path.name}\n" for path, digest in self.pieces)
+        return hashlib.sha256(text.encode()).hexdigest()
 
     @property
     def sample_rate(self) -> float | None:
@@ -149,7 +169,7 @@ class Recording:
     @property
     def provenance(self) -> tuple[str, ...]:
         """What was done to the numbers, one line a step."""
-        return (*self._table.steps, *self._steps, *self._pass_steps())
+        return (*self._table.steps, *self._piece_steps(), *self._steps, *self._pass_steps())
 
     def blocks(self, size: int = 1_000_000) -> Iterator[Floats]:
         """Yield the samples in SI, in blocks of ``size`` (the last one shorter).
@@ -168,7 +188,7 @@ class Recording:
         self._start_pass()
         kept: list[tuple[Floats, Floats | None]] = []
         count = 0
-        for chunk in self._table.chunks():
+        for chunk in self._chunks():
             kept.append(self._checked(chunk))
             count += kept[-1][0].size
             while count >= size:
@@ -182,6 +202,10 @@ class Recording:
             values, self.block_times = _join(kept)
             yield values
 
+    def _chunks(self) -> Iterator[Chunk]:
+        with _disk(self.path):
+            yield from self._table.chunks()
+
     def _checked(self, chunk: Chunk) -> tuple[Floats, Floats | None]:
         """Scale one chunk, follow its clock, and cut it at its gaps."""
         raw = np.asarray(chunk.values, dtype=np.float64)
@@ -189,15 +213,34 @@ class Recording:
         slope, intercept = self._line
         values = raw if (slope, intercept) == (1.0, 0.0) else slope * raw + intercept
         self._samples += values.size
+        times, cuts = self._times(chunk)
+        if chunk.starts and self.spec.between == "split":
+            cuts.insert(0, 0)
+        if not cuts:
+            return values, times
+        return np.insert(values, cuts, np.nan), None if times is None else np.insert(times, cuts, np.nan)
+
+    def _times(self, chunk: Chunk) -> tuple[Floats | None, list[int]]:
+        """Return the times of a chunk in s of recorded time, and the samples before which the clock breaks."""
         times = self._seconds(chunk)
         if times is None:
-            return values, self._even_times(values.size)
+            count = len(chunk.values)
+            even = np.arange(self._samples - count, self._samples)
+            return even / self._given_rate if self._given_rate else None, []
+        if chunk.starts:
+            self._shift = self._follow_on(times)
+        times = times + self._shift
         breaks = self._clock.feed(times)
         self._report(breaks, chunk)
-        cuts = [found.index for found in breaks if found.kind != "repeat"]
-        if cuts:
-            return np.insert(values, cuts, np.nan), np.insert(times, cuts, np.nan)
-        return values, times
+        return times, [found.index for found in breaks if found.kind != "repeat"]
+
+    def _follow_on(self, times: Floats) -> float:
+        """Return the shift that lets a further piece begin one interval after the last one."""
+        known = times[~np.isnan(times)]
+        if not known.size or self._clock.last is None:
+            return self._shift
+        step = self._clock.interval or (float(known[1] - known[0]) if known.size > 1 else 0.0)
+        return self._clock.last + step - float(known[0])
 
     def _check_values(self, raw: Floats, chunk: Chunk) -> None:
         """Refuse infinities; count or refuse missing values."""
@@ -244,11 +287,6 @@ class Recording:
         elapsed = (stamps - self._origin) / np.timedelta64(1, "ns") * 1e-9
         return np.asarray(elapsed, dtype=np.float64)
 
-    def _even_times(self, count: int) -> Floats | None:
-        if not self._given_rate:
-            return None
-        return np.arange(self._samples - count, self._samples) / self._given_rate
-
     def _report(self, breaks: list[Break], chunk: Chunk) -> None:
         """Raise at a gap, or keep a sentence for the provenance."""
         for found in breaks:
@@ -275,6 +313,13 @@ class Recording:
                 f"{self.path}, {self._first_repeat}, {self._clock.repeats} repeated times in all; repair the "
                 'record, give sample_rate instead of the time column, or set gaps = "split"'
             )
+
+    def _piece_steps(self) -> list[str]:
+        if len(self._files) == 1:
+            return []
+        between = "joined" if self.spec.between == "join" else "kept apart"
+        names = [f"piece {n}: {path.name}, sha256 {digest}" for n, (path, digest) in enumerate(self.pieces, start=1)]
+        return [f"{len(names)} pieces {between}", *names]
 
     def _pass_steps(self) -> list[str]:
         """Say what the last pass found."""
@@ -306,16 +351,25 @@ def open_record(spec: RecordSpec) -> Recording:
         wrong kind, or contradicts the file.
     """
     path = Path(spec.path)
+    with _disk(path):
+        files = files_of(path)
+        table = open_table(path, spec) if files == (path,) else open_pieces(path, files, spec)
+        return Recording(spec, files, table)
+
+
+@contextmanager
+def _disk(path: Path) -> Iterator[None]:
+    """Say in one sentence what stands between us and a file."""
     try:
-        if path.is_dir():
-            raise FileError(f"{path}: is a directory; name the record in it")
-        return Recording(spec, open_table(path, spec))
+        yield
     except FileNotFoundError as error:
-        raise FileError(f"{path}: there is no such file; check the path") from error
+        raise FileError(f"{error.filename or path}: there is no such file; check the path") from error
     except OSError as error:
         if isinstance(error, FileError):
             raise
-        raise FileError(f"{path}: cannot be read ({error.strerror or error}); check the file") from error
+        raise FileError(
+            f"{error.filename or path}: cannot be read ({error.strerror or error}); check the file"
+        ) from error
 
 
 def summarise(recording: Recording) -> RecordSummary:

@@ -2,15 +2,17 @@
 
 from __future__ import annotations
 
+import importlib
 import re
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
-from springlife.errors import InputError, nearest
+from springlife.errors import InputError, MissingExtraError, nearest
 
 Floats = NDArray[np.float64]
 Stamps = NDArray[np.datetime64]
@@ -42,12 +44,13 @@ class Chunk:
     """Consecutive samples as the file holds them: not yet scaled, NaN where a value is missing.
 
     ``times`` is None, floats in the time column's unit, or date-times; ``place`` says where sample ``i``
-    stands in the file, as a person counts.
+    stands in the file, as a person counts; ``starts`` marks the first chunk of a further piece of the record.
     """
 
     values: Floats
     times: Floats | Stamps | None
     place: Callable[[int], str]
+    starts: bool = False
 
 
 @dataclass(frozen=True)
@@ -123,3 +126,19 @@ def listing(columns: Sequence[Column]) -> str:
     """Name the columns, at most twenty of them."""
     names = [column.title for column in columns]
     return ", ".join(names[:20]) + (f" and {len(names) - 20} more" if len(names) > 20 else "")
+
+
+def need(module: str, what: str, path: Path) -> Any:
+    """Import an optional library.
+
+    Raises
+    ------
+    MissingExtraError
+        When it is not installed; the message says how to install it.
+    """
+    try:
+        return importlib.import_module(module)
+    except ImportError as error:
+        raise MissingExtraError(
+            f'{path}: reading {what} needs the library {module}; install it with pip install "springlife[formats]"'
+        ) from error
