@@ -90,12 +90,13 @@ class Clock:
         irregular = (steps > self.longest) | (steps == 0)
         if np.count_nonzero(irregular) < EVENLY or (steps < 0).any():
             return
-        # Stamps rounded more coarsely than the rate repeat or skip evenly, within a step of a straight line.
-        mean = float(steps.mean())
+        # Stamps rounded more coarsely than the rate repeat or skip evenly, within one step of a straight line.
+        elapsed = np.concatenate([[0.0], np.cumsum(steps)])
+        index = np.arange(elapsed.size) - (elapsed.size - 1) / 2
+        slope = float(index @ elapsed / (index @ index))
         quantum = float(forward.min())
-        drift = np.cumsum(steps) - mean * np.arange(1, steps.size + 1)
-        if np.ptp(np.append(drift, 0.0)) <= 1.01 * quantum:
-            self.interval, self.longest, self.rounded_to = mean, mean + 1.01 * quantum, quantum
+        if np.ptp(elapsed - slope * index) <= 1.05 * quantum:
+            self.interval, self.longest, self.rounded_to = slope, slope + 1.05 * quantum, quantum
 
     def _search(self, series: Floats, steps: Floats) -> list[Break]:
         found: list[Break] = []
