@@ -97,7 +97,7 @@ def test_with_only_life_scattering_b_lives_are_lognormal_quantiles(tmp_path: Pat
 
 def test_failures_before_the_target_by_hand(tmp_path: Path) -> None:
     """A target of one standard deviation under the median: Phi(-1) = 0.1586553."""
-    first = study(tmp_path, only("life"), samples=512)
+    first = study(tmp_path, only("life"), samples=1024)
     target = drawn_life(first) * 10**-0.2
     fails = study(tmp_path, only("life"), ('"20000 h"', f'"{target!r} h"')).fails
     assert fails.value == pytest.approx(0.15865525, abs=2e-4)
@@ -168,7 +168,7 @@ def test_solid_contact_by_hand(tmp_path: Path) -> None:
 def test_yielding_by_hand(tmp_path: Path) -> None:
     """The limit falls with the tensile strength: peak at 2/3 sd under the limit, Phi(-2/3) = 0.2524925."""
     longer = ('"55 mm"', '"75 mm"')  # room to yield before solid
-    first = study(tmp_path, only("tensile_strength"), longer, samples=512)
+    first = study(tmp_path, only("tensile_strength"), longer, samples=1024)
     assert first.assessment.judgement is not None
     spring = first.assessment.judgement.spring
     slope = float(stress_map(spring).static(np.asarray(1e-3))) / 1e-3
@@ -273,7 +273,7 @@ def test_only_the_wire_diameter_against_drawing_springs_one_by_one(tmp_path: Pat
     drawn = Population(case, duty, result.assessment.judgement, ()).centre
     (spread,) = result.spreads
     rng = np.random.default_rng(11)
-    wires = spread.values(rng.uniform(size=200))
+    wires = spread.values(rng.uniform(size=100))
     lives = [one_by_one(case, duty, drawn | {"wire_diameter": float(d)}) for d in wires]
     order = np.argsort(wires)
     assert np.all(np.diff(np.asarray(lives)[order]) < 0)
@@ -334,8 +334,8 @@ def test_a_case_that_cannot_be_judged_is_refused(tmp_path: Path) -> None:
 
 
 def test_a_duty_without_damage_is_refused(tmp_path: Path) -> None:
-    with pytest.raises(InputError, match="no spring of 512 takes damage"):
-        study(tmp_path, "", ("elementary", "original"), ('high = "20 mm"', 'high = "6 mm"'), samples=512)
+    with pytest.raises(InputError, match="no spring of 1024 takes damage"):
+        study(tmp_path, "", ("elementary", "original"), ('high = "20 mm"', 'high = "6 mm"'), samples=1024)
 
 
 def test_wire_too_weak_for_the_criterion_is_refused(tmp_path: Path) -> None:
@@ -344,13 +344,27 @@ def test_wire_too_weak_for_the_criterion_is_refused(tmp_path: Path) -> None:
         ("gerber", "asme-elliptic"),
     ]
     with pytest.raises(InputError, match=r"\d+ of \d+ springs are so weak in tension that asme-elliptic has no"):
-        study(tmp_path, "[scatter]\ntensile_strength = { share = 0.12 }\n", *changes, samples=512)
+        study(tmp_path, "[scatter]\ntensile_strength = { share = 0.12 }\n", *changes, samples=1024)
+
+
+@pytest.mark.parametrize(
+    ("table", "message"),
+    [
+        ('wire_diameter = { half_range = "1.2 mm" }', "scatter.wire_diameter.half_range is 1.2 mm, not under half of"),
+        ("active_coils = { half_range = 11 }", "active_coils.half_range is 11, not under half of the drawing's 20"),
+        ('free_length = { half_range = "20 mm" }', "springs cannot exist: they are solid at their free length"),
+    ],
+)
+def test_springs_that_cannot_exist_are_refused(table: str, message: str, tmp_path: Path) -> None:
+    with pytest.raises(InputError) as error:
+        study(tmp_path, f"[scatter]\n{table}\n", ('"20 mm"', '"7 mm"'), ("coils = 12", "coils = 22"), samples=1024)
+    assert message in str(error.value) and "case.toml: " in str(error.value)
 
 
 def test_many_unlimited_lives_leave_no_ranking(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
     """At the knee about half the springs take no damage by Miner's original reading: B50 and more unlimited."""
     changes = [("elementary", "original"), ('high = "20 mm"', 'high = "22 mm"')]
-    result = study(tmp_path, "", *changes, samples=512)
+    result = study(tmp_path, "", *changes, samples=1024)
     unlimited = np.isinf(result.lives).mean()
     assert 0.5 < unlimited < 1
     assert result.sensitivities == () and "no life to take a logarithm of" in (result.no_sensitivities or "")
@@ -358,7 +372,7 @@ def test_many_unlimited_lives_leave_no_ranking(tmp_path: Path, capsys: pytest.Ca
     assert result.to_dict()["b_lives"]["B50"]["passes"]["value"] is None
     with pytest.raises(ValueError, match="no indices to draw"):
         tornado(result)
-    assert main(["scatter", str(result.case.path), "--samples", "512"]) == 0
+    assert main(["scatter", str(result.case.path), "--samples", "1024"]) == 0
     assert "unlimited" in capsys.readouterr().out
 
 
@@ -398,7 +412,7 @@ def test_bad_arguments_end_in_one_sentence(
 
 def test_what_is_held_and_what_the_case_says_are_printed(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
     table = (
-        '[scatter]\noff = ["allowed_damage"]\nsamples = 512\nwire_diameter = { half_range = "0.02 mm", sigmas = 2 }\n'
+        '[scatter]\noff = ["allowed_damage"]\nsamples = 1024\nwire_diameter = { half_range = "0.02 mm", sigmas = 2 }\n'
     )
     assert main(["scatter", str(write_case(tmp_path, CASE + table, None))]) == 0
     out = capsys.readouterr().out
@@ -406,8 +420,17 @@ def test_what_is_held_and_what_the_case_says_are_printed(tmp_path: Path, capsys:
     assert "held" in out and "allowed damage" in out
 
 
+def test_events_measured_differently_are_said_to_keep_their_pairing(tmp_path: Path) -> None:
+    force = (
+        '[[duty.event]]\nname = "push"\nrecord = "work.csv"\nchannel = "y"\nunit = "N"\nmeasures = "force"\nscale = 4.0'
+    )
+    mixed = study(tmp_path, "", ("[judge]", force + "\n[judge]"), record=RECORD, samples=1024)
+    alike = study(tmp_path, "", samples=1024)
+    assert mixed.pairing_held and not alike.pairing_held
+
+
 def test_the_tornado_shows_every_variable_apart(tmp_path: Path) -> None:
-    figure = tornado(study(tmp_path, "", samples=512))
+    figure = tornado(study(tmp_path, "", samples=1024))
     (axes,) = figure.axes
     figure.canvas.draw()
     assert len(axes.patches) == len(VARIABLES)

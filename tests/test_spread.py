@@ -6,6 +6,7 @@ and A401 from memory); coil diameter and free length: Standard Handbook of Machi
 
 from __future__ import annotations
 
+from importlib.resources import files
 from pathlib import Path
 
 import numpy as np
@@ -19,6 +20,7 @@ from springlife.life.spread import (
     coil_half_range,
     defaults,
     length_half_range,
+    spreads_of,
     tensile_share,
     wire_half_range,
 )
@@ -146,8 +148,8 @@ def test_a_factor_is_lognormal_about_its_median() -> None:
         ("duty = { cov = nan }", "scatter.duty.cov"),
         ('off = ["alowed_damage"]', "off names 'alowed_damage', which is not known; did you mean 'allow"),
         ('off = ["life"]\nlife = { log10_sd = 0.1 }', "life is switched off and given a distribution"),
-        ("samples = 1000", "samples is 1000; give a power of two from 512 to 1048576"),
-        ("samples = 256", "samples is 256; give a power of two"),
+        ("samples = 1000", "samples is 1000; give a power of two from 1024 to 1048576"),
+        ("samples = 512", "samples is 512; give a power of two"),
         ("seed = -1", "scatter: seed is -1; give a whole number from 0 up"),
         ('strengths_are = "B50"', "scatter.strengths_are: 'B50' is not known"),
     ],
@@ -164,3 +166,45 @@ def test_switching_everything_off_is_refused(tmp_path: Path) -> None:
     text = CASE + f"[scatter]\noff = {list(VARIABLES)}\n"
     with pytest.raises(InputError, match="nothing scatters"):
         load_case(write_case(tmp_path, text, None))
+
+
+def spread_of(folder: Path, name: str, *changes: tuple[str, str], table: str = "") -> Spread:
+    text = CASE
+    for find, put in changes:
+        assert find in text
+        text = text.replace(find, put)
+    case = load_case(write_case(folder, text + table, None))
+    return next(one for one in spreads_of(case, case.build_spring()) if one.name == name)
+
+
+def test_a_case_takes_its_tables(tmp_path: Path) -> None:
+    """A228 of 2 mm = 0.0787 in: +- 0.0005 in; index 8, coil table between 0.076 (.010) and 0.114 (.013)."""
+    wire = spread_of(tmp_path, "wire_diameter")
+    assert (wire.centre, wire.half_range) == pytest.approx((2e-3, 5e-4 * INCH))
+    assert wire.sigmas == 3 and wire.provenance == "published" and "A228" in wire.source
+    coil = spread_of(tmp_path, "coil_diameter")
+    part = (2 / 25.4 - 0.076) / (0.114 - 0.076)
+    assert (coil.centre, coil.half_range) == pytest.approx((16e-3, (0.010 + part * 0.003) * INCH))
+    outer = spread_of(tmp_path, "coil_diameter", ('mean_diameter = "16 mm"', 'outer_diameter = "18 mm"'))
+    assert outer.centre == pytest.approx(18e-3) and outer.half_range == pytest.approx(coil.half_range)
+
+
+def test_wire_without_a_table_takes_a_share_and_says_so(tmp_path: Path) -> None:
+    wire = spread_of(tmp_path, "wire_diameter", ('"A228"', '"A313"'))
+    assert wire.half_range == pytest.approx(0.01 * 2e-3)
+    assert wire.provenance == "common practice" and "no source" in wire.source
+
+
+def test_the_damage_sum_scatters_about_what_the_case_allows(tmp_path: Path) -> None:
+    """Wirsching: lognormal, median 1, coefficient of variation 0.3."""
+    spread = spread_of(tmp_path, "allowed_damage", ("[judge]", "[judge]\nallowed_damage = 0.5"))
+    assert spread.centre == 0.5 and spread.log_sd == pytest.approx(np.sqrt(np.log(1.09)))
+
+
+def test_the_manuals_table_is_read(tmp_path: Path) -> None:
+    manual = files("springlife").joinpath("manual/scatter.md").read_text(encoding="utf-8")
+    table = manual.split("```toml\n")[1].split("```")[0]
+    given = load_case(write_case(tmp_path, CASE + table, None)).input.scatter
+    assert given.off == ["allowed_damage"] and given.strengths_are == "B10"
+    tensile = spread_of(tmp_path, "tensile_strength", table=table)
+    assert tensile.half_range == pytest.approx(70e6) and tensile.source == "the case file"

@@ -225,6 +225,7 @@ class Population:
         The laws take arrays where they say a spring: the stress map reads only numbers of it.
         """
         springs = Springs.of(self.drawn, values["coil_diameter"] + self.stretch * values["wire_diameter"], values)
+        self._check(springs)
         low, high = self._deflections(cycles, springs, values["duty"])
         judge, model = self.case.judge, self.model
         stress = stress_map(cast("HelicalSpring", springs), judge.stress_factor, judge.curvature_on)
@@ -236,6 +237,20 @@ class Population:
         with np.errstate(divide="ignore"):
             damage = cycles.count / N
         return damage, high.max(axis=1, keepdims=True, initial=0.0), springs
+
+    def _check(self, springs: Springs) -> None:
+        """Refuse tolerances under which springs come out that cannot be wound."""
+        faults = {
+            "they are solid at their free length": springs.solid_deflection <= 0,
+            "they have no active coil": ~(springs.rate > 0),
+            "their coil is no wider than their wire": springs.mean_diameter <= springs.wire_diameter,
+        }
+        for fault, which in faults.items():
+            if which.any():
+                raise InputError(
+                    f"{self.case.path}: {np.count_nonzero(which)} of {which.size} springs cannot exist: {fault}; "
+                    "narrow the tolerances in [scatter]"
+                )
 
     def _deflections(self, cycles: Cycles, springs: Springs, duty: Floats) -> tuple[Floats, Floats]:
         """Give both ends of each cycle in deflections of each spring, m, shapes (n, m).

@@ -79,6 +79,14 @@ class ScatterResult:
         """Variables that do not scatter."""
         return tuple(self.case.input.scatter.off)
 
+    @property
+    def pairing_held(self) -> bool:
+        """Whether cycles are paired as for the drawn spring: exact only when all ends are measured alike."""
+        assert self.assessment.duty is not None
+        strokes = {"deflection", "travel"}
+        measures = {event.measures for event in self.assessment.duty.events}
+        return len(measures - strokes) + bool(measures & strokes) > 1
+
     def to_dict(self) -> dict[str, Any]:
         """Give everything for JSON but the single lives; SI values under keys that name the unit."""
         number, unit = self.assessment.target
@@ -119,6 +127,7 @@ class ScatterResult:
             "distinct_cycles": self.distinct_cycles,
             "cells": self.cells,
             "cell_error": self.cell_error,
+            "pairing_held": self.pairing_held,
             "findings": [finding.to_dict() for finding in self.assessment.findings],
             "inputs": [{"path": name, "sha256": digest} for name, digest in self.assessment.inputs],
         }

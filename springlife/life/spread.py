@@ -15,10 +15,11 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 from numpy.typing import NDArray
 
+from springlife.errors import InputError
 from springlife.life.scatter_input import VARIABLES, ScatterInput
 from springlife.spring.helical import DIAMETERS
 from springlife.strength import endurance
-from springlife.units import parse
+from springlife.units import METRIC, parse, significant
 
 if TYPE_CHECKING:
     from springlife.life.case import Case
@@ -89,15 +90,21 @@ def defaults() -> dict[str, Any]:
 
 
 def spreads_of(case: Case, spring: HelicalSpring) -> tuple[Spread, ...]:
-    """Return the distribution of every variable that the case does not switch off, in one fixed order."""
+    """Return the distribution of every variable that the case does not switch off, in one fixed order.
+
+    Raises
+    ------
+    InputError
+        A half-range of the case as wide as the value itself.
+    """
     given = case.input.scatter
     makers = {
-        "wire_diameter": lambda: _tolerance(given, "wire_diameter", "length", spring.wire_diameter, spring),
-        "coil_diameter": lambda: _tolerance(given, "coil_diameter", "length", drawn_diameter(case)[1], spring),
-        "active_coils": lambda: _tolerance(given, "active_coils", "number", spring.active_coils, spring),
-        "free_length": lambda: _tolerance(given, "free_length", "length", spring.free_length, spring),
-        "shear_modulus": lambda: _tolerance(given, "shear_modulus", "stress", spring.G, spring),
-        "tensile_strength": lambda: _tolerance(given, "tensile_strength", "stress", spring.Sut, spring),
+        "wire_diameter": lambda: _tolerance(case, "wire_diameter", "length", spring.wire_diameter, spring),
+        "coil_diameter": lambda: _tolerance(case, "coil_diameter", "length", drawn_diameter(case)[1], spring),
+        "active_coils": lambda: _tolerance(case, "active_coils", "number", spring.active_coils, spring),
+        "free_length": lambda: _tolerance(case, "free_length", "length", spring.free_length, spring),
+        "shear_modulus": lambda: _tolerance(case, "shear_modulus", "stress", spring.G, spring),
+        "tensile_strength": lambda: _tolerance(case, "tensile_strength", "stress", spring.Sut, spring),
         "endurance_strength": lambda: _endurance(given),
         "life": lambda: _life(given),
         "duty": lambda: _factor("duty", given, defaults()["duty"]),
@@ -111,17 +118,27 @@ def drawn_diameter(case: Case) -> tuple[str, float]:
     return next((name, value) for name in DIAMETERS if (value := getattr(case.spring, name)) is not None)
 
 
-def _tolerance(given: ScatterInput, name: str, kind: str, centre: float, spring: HelicalSpring) -> Spread:
+def _tolerance(case: Case, name: str, kind: str, centre: float, spring: HelicalSpring) -> Spread:
     reading = defaults()["reading"]
-    override = getattr(given, name)
+    override = getattr(case.input.scatter, name)
     if override is not None:
         half = centre * override.share if override.half_range is None else override.half_range
+        if not half < centre / 2:
+            seen, drawn = (_shown(value, kind) for value in (half, centre))
+            raise InputError(
+                f"{case.path}: scatter.{name}.half_range is {seen}, not under half of the drawing's {drawn}; "
+                "check its unit"
+            )
         return Spread(name, kind, centre, FROM_CASE, FROM_CASE, half, override.sigmas or reading["sigmas"])
     half, entry = _LOOKUPS[name](spring) if name in _LOOKUPS else (None, {})
     if half is None:
         entry = defaults()[name]["other"]
         half = entry["half_range_coils"] if "half_range_coils" in entry else centre * entry["share"]
     return Spread(name, kind, centre, entry["source"], entry["provenance"], half, reading["sigmas"])
+
+
+def _shown(value: float, kind: str) -> str:
+    return significant(value) if kind == "number" else METRIC(value, kind)
 
 
 def _factor(name: str, given: ScatterInput, entry: dict[str, Any], centre: float = 1.0) -> Spread:

@@ -79,11 +79,15 @@ def _print_sensitivities(result: ScatterResult) -> None:
     rows = [
         (
             _words(one.variable),
-            *(f"{100 * part.value:.1f} % ± {50 * (part.high - part.low):.1f}" for part in (one.first, one.total)),
+            *(f"{_tenths(part.value)} % ± {_tenths(part.high - part.value)}" for part in (one.first, one.total)),
         )
         for one in result.sensitivities
     ]
     print_table(console, "Share of the variance of log life", ("variable", "alone", "with all it acts through"), rows)
+
+
+def _tenths(share: float) -> str:
+    return f"{round(100 * share, 1) + 0.0:.1f}"  # no minus before a rounded zero
 
 
 def describe(spread: Spread, result: ScatterResult) -> str:
@@ -106,7 +110,9 @@ def describe(spread: Spread, result: ScatterResult) -> str:
 
 
 def _origin(spread: Spread) -> str:
-    return spread.source if spread.source == spread.provenance else f"{spread.source} ({spread.provenance})"
+    if spread.source.startswith(spread.provenance):
+        return spread.source
+    return f"{spread.source} ({spread.provenance})"
 
 
 def _words(name: str) -> str:
@@ -122,5 +128,7 @@ def _notes(result: ScatterResult) -> list[tuple[str, str]]:
     if result.cells < result.distinct_cycles:
         error = f"{significant(100 * result.cell_error, 2)} %"
         rows.append(("cycles", f"{result.distinct_cycles} distinct cycles in {result.cells}: damage within {error}"))
+    if result.pairing_held:
+        rows.append(("pairing", "cycles between events measured differently stay paired as for the drawn spring"))
     rows.append(("drawn by", f"{REPLICATES} independently scrambled Sobol sets; their differences make the intervals"))
     return [*rows, ("read as", ASSUMED)]
