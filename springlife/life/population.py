@@ -6,7 +6,6 @@ laws are those of the rooms below: the stress map, the criteria and the life cur
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any, cast
 
@@ -14,7 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from springlife.errors import InputError
-from springlife.life.reading import MEASURES, Duty
+from springlife.life.reading import Duty, line_of
 from springlife.life.scatter_input import VARIABLES
 from springlife.life.spread import Spread, drawn_diameter
 from springlife.spring.helical import HelicalSpring
@@ -32,6 +31,7 @@ Bools = NDArray[np.bool_]
 # Sizes of the calculation, not of the spring: cycles kept one by one, cells a side for the rest, and the
 # number of array elements worked on at a time.
 KEPT, SIDE, AT_ONCE = 256, 40, 200_000
+MEASURES = ("deflection", "length", "force")  # what an end of a cycle was recorded as; travel is deflection
 _MEAN_OVER_DRAWN = {"mean_diameter": 0, "outer_diameter": -1, "inner_diameter": 1}  # in wire diameters
 
 
@@ -106,9 +106,8 @@ class Cycles:
 def cycles_of(duty: Duty, drawn: HelicalSpring, residue: str) -> Cycles:
     """Return the distinct cycles of one pass; events recorded as travel are deflections like any other."""
     table = duty.one_pass(drawn).cycles(residue)  # type: ignore[arg-type]
-    names = list(MEASURES)
-    same = {"travel": "deflection"}
-    measure = np.array([names.index(same.get(event.measures, event.measures)) for event in duty.events])
+    names = ["deflection" if event.measures == "travel" else event.measures for event in duty.events]
+    measure = np.array([MEASURES.index(name) for name in names])
     found = Cycles(table.low, table.high, table.count, measure[table.event_low], measure[table.event_high])
     found = found.chosen((found.count > 0) & (found.high > found.low))
     keys = np.stack([found.low, found.high, found.low_measure, found.high_measure], axis=1)
@@ -259,9 +258,9 @@ class Population:
         the duty's factor stretches the range about its mean.
         """
         low, high = np.empty((len(duty), cycles.low.size)), np.empty((len(duty), cycles.low.size))
-        lines: Iterable[Callable[[Any, float], tuple[Any, Any]]] = MEASURES.values()
-        for number, line in enumerate(lines):
-            (slope, shift), (slope0, shift0) = line(springs, 0.0), line(self.drawn, 0.0)
+        for number, name in enumerate(MEASURES):
+            slope0, shift0 = line_of(name, self.drawn, 0.0)
+            slope, shift = (np.asarray(part) for part in line_of(name, cast("HelicalSpring", springs), 0.0))
             for ends, at, measure in ((low, cycles.low, cycles.low_measure), (high, cycles.high, cycles.high_measure)):
                 here = measure == number
                 if here.any():
