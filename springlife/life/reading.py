@@ -6,10 +6,9 @@ deflection, so that a change of free length or rate never touches the record aga
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from dataclasses import dataclass, field, replace
 from functools import cached_property
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -22,13 +21,18 @@ if TYPE_CHECKING:
     from springlife.life.case import Case, EventInput
     from springlife.spring.helical import HelicalSpring
 
-# Recorded quantity: slope and intercept of deflection over it, from the spring and the installed deflection.
-MEASURES: dict[str, Callable[[Any, Any], tuple[Any, Any]]] = {
-    "deflection": lambda spring, installed: (1.0, 0.0),
-    "travel": lambda spring, installed: (1.0, installed),
-    "length": lambda spring, installed: (-1.0, spring.free_length),
-    "force": lambda spring, installed: (1.0 / spring.rate, 0.0),
-}
+Line = tuple[float, float]
+
+
+def line_of(measures: str, spring: HelicalSpring | None, installed: float) -> Line:
+    """Return slope and intercept of deflection (m) over a recorded quantity; the spring enters for two of them."""
+    if measures == "travel":
+        return 1.0, installed
+    if spring is not None and measures == "length":
+        return -1.0, spring.free_length
+    if spring is not None and measures == "force":
+        return 1.0 / spring.rate, 0.0
+    return 1.0, 0.0
 
 
 @dataclass
@@ -106,9 +110,9 @@ class EventReading:
         """Whether the event comes from a record rather than a specified programme."""
         return self.record is not None
 
-    def line(self, spring: HelicalSpring) -> tuple[float, float]:
+    def line(self, spring: HelicalSpring) -> Line:
         """Return slope and intercept of deflection (m) over the recorded quantity."""
-        return MEASURES[self.measures](spring, self.installed)
+        return line_of(self.measures, spring, self.installed)
 
 
 @dataclass(frozen=True)
@@ -129,7 +133,7 @@ class Duty:
         return self._in_deflection(None)
 
     def _in_deflection(self, spring: HelicalSpring | None) -> Pass:
-        lines = [MEASURES[event.measures](spring, event.installed) for event in self.events]
+        lines = [line_of(event.measures, spring, event.installed) for event in self.events]
         return Pass(
             tuple(
                 Event(event.name, event.count.mapped(*line), event.repeats)
@@ -206,7 +210,7 @@ def _read_record(case: Case, event: EventInput, spring: HelicalSpring, off: Beyo
         gaps=event.gaps,
     )
     recording = open_record(spec)
-    slope, intercept = MEASURES[event.measures](spring, event.installed_deflection or 0.0)
+    slope, intercept = line_of(event.measures, spring, event.installed_deflection or 0.0)
     summary, total = SummaryAccumulator(recording), Count()
     for block in recording.blocks():
         summary.feed(block)
