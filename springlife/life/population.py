@@ -13,7 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from springlife.errors import InputError
-from springlife.life.reading import Duty, line_of
+from springlife.life.reading import Duty, EventReading
 from springlife.life.scatter_input import VARIABLES
 from springlife.life.spread import Spread, drawn_diameter
 from springlife.spring.helical import HelicalSpring
@@ -103,11 +103,15 @@ class Cycles:
         return Cycles(*(np.concatenate([getattr(self, name), getattr(other, name)]) for name in names))
 
 
+def measure_of(event: EventReading) -> int:
+    """Return the position in :data:`MEASURES` of what an event was recorded as."""
+    return MEASURES.index("deflection" if event.measures == "travel" else event.measures)
+
+
 def cycles_of(duty: Duty, drawn: HelicalSpring, residue: str) -> Cycles:
     """Return the distinct cycles of one pass; events recorded as travel are deflections like any other."""
     table = duty.one_pass(drawn).cycles(residue)  # type: ignore[arg-type]
-    names = ["deflection" if event.measures == "travel" else event.measures for event in duty.events]
-    measure = np.array([MEASURES.index(name) for name in names])
+    measure = np.array([measure_of(event) for event in duty.events])
     found = Cycles(table.low, table.high, table.count, measure[table.event_low], measure[table.event_high])
     found = found.chosen((found.count > 0) & (found.high > found.low))
     keys = np.stack([found.low, found.high, found.low_measure, found.high_measure], axis=1)
@@ -150,6 +154,7 @@ class Population:
         """Gather the duty's cycles and what does not scatter."""
         self.case, self.drawn, self.model, self.spreads = case, judgement.spring, judgement.model, spreads
         self.stretch = _MEAN_OVER_DRAWN[drawn_diameter(case)[0]]
+        self.recorded = {measure_of(event): event for event in duty.events}.values()  # one a measure
         self.centre = self._centre(case)
         self.every = cycles_of(duty, self.drawn, "repeat")
         self.steady = in_cells(self.every, self._of_the_drawing(self.every))
@@ -258,9 +263,10 @@ class Population:
         the duty's factor stretches the range about its mean.
         """
         low, high = np.empty((len(duty), cycles.low.size)), np.empty((len(duty), cycles.low.size))
-        for number, name in enumerate(MEASURES):
-            slope0, shift0 = line_of(name, self.drawn, 0.0)
-            slope, shift = (np.asarray(part) for part in line_of(name, cast("HelicalSpring", springs), 0.0))
+        for event in self.recorded:
+            number = measure_of(event)
+            slope0, shift0 = event.line(self.drawn)
+            slope, shift = (np.asarray(part) for part in event.line(cast("HelicalSpring", springs)))
             for ends, at, measure in ((low, cycles.low, cycles.low_measure), (high, cycles.high, cycles.high_measure)):
                 here = measure == number
                 if here.any():
