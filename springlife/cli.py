@@ -73,6 +73,7 @@ def _parser() -> argparse.ArgumentParser:
     grades.add_argument("grade", nargs="?", help="one grade in full")
     grades.add_argument("--file", metavar="GRADES.toml", help="a grades file of your own")
     _finish(grades, _grades)
+    _fit_command(commands)
     verify = commands.add_parser("verify", help="recompute the published examples on this machine")
     _finish(verify, _verify)
     return parser
@@ -98,6 +99,54 @@ def _compare_command(commands: Any) -> None:
         default="stroke",
         help="what stays as of the drawn spring (default: stroke)",
     )
+
+
+def _fit_command(commands: Any) -> None:
+    text = "fit own fatigue tests and write the curve that a case can name"
+    parser = commands.add_parser("fit", help=text, description=text[0].upper() + text[1:] + ".", epilog=CAUTION)
+    parser.add_argument("tests", metavar="TESTS.csv", help="one row a spring: amplitude, mean, cycles, outcome, group")
+    parser.add_argument("--grade", required=True, help="wire of the springs tested, such as A232")
+    parser.add_argument("--wire", required=True, metavar="DIAMETER", help="wire diameter, such as '6.5 mm'")
+    parser.add_argument("--tensile", metavar="STRENGTH", help="tensile strength from the certificate")
+    parser.add_argument(
+        "--criterion", default="gerber", help="brings mean stresses to fully reversed (default: gerber)"
+    )
+    parser.add_argument("--reliability", type=float, default=0.9, help="of the design curve (default: 0.9)")
+    parser.add_argument("--confidence", type=float, default=0.9, help="of the design curve (default: 0.9)")
+    parser.add_argument("-o", "--output", metavar="CURVE.toml", help="write the curve file here")
+    parser.add_argument("--figure", metavar="FILE", help="draw tests and curves to an SVG, PNG or PDF file")
+    parser.add_argument("--title", default="own fatigue tests", help="title of the curve file")
+    parser.add_argument("--force", action="store_true", help="write over files that are already there")
+    _finish(parser, _fit)
+
+
+def _fit(arguments: argparse.Namespace) -> int:
+    from springlife import units
+    from springlife.life.fitting import fit_own_tests
+
+    result = fit_own_tests(
+        arguments.tests,
+        wire=arguments.grade,
+        wire_diameter=units.parse(arguments.wire, "length"),
+        tensile_strength=None if arguments.tensile is None else units.parse(arguments.tensile, "stress"),
+        by=arguments.criterion,
+        reliability=arguments.reliability,
+        confidence=arguments.confidence,
+    )
+    if arguments.figure:
+        from springlife.report.figures_fit import own_tests
+        from springlife.report.output import save_figure
+
+        save_figure(own_tests(result), arguments.figure, force=arguments.force)
+    if arguments.output:
+        result.write(arguments.output, title=arguments.title, force=arguments.force)
+    if arguments.json:
+        _print_json(result.to_dict())
+    else:
+        from springlife.report.fit_text import print_fit
+
+        print_fit(result, CAUTION)
+    return 0
 
 
 def _count_command(commands: Any) -> None:

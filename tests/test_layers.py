@@ -11,11 +11,12 @@ import pytest
 
 PACKAGE = Path(__file__).parent.parent / "springlife"
 # What each folder may import besides itself, in the order of the job.
-BASE = {"errors", "units", "published", "data"}
+BASE = {"errors", "units", "published", "files", "data"}
 MAY_IMPORT = {
     "errors": set(),
     "units": {"errors"},
     "published": {"errors", "units"},
+    "files": {"errors"},
     "spring": BASE,
     "duty": BASE,
     "strength": BASE,

@@ -41,7 +41,7 @@ _RULES = _rules()
 _SOURCED = ("source", "provenance")
 ENDS: dict[str, dict[str, int]] = {key: row for key, row in _RULES["ends"].items() if key not in _SOURCED}
 SUPPORTS: dict[str, float] = _RULES["supports"]["alpha"]
-_SSU_OVER_SUT: float = _RULES["ultimate_shear"]["fraction_of_tensile"]
+SSU_OVER_SUT: float = _RULES["ultimate_shear"]["fraction_of_tensile"]
 
 
 class GeometryError(InputError):
@@ -267,7 +267,7 @@ class HelicalSpring:
     @property
     def Ssu(self) -> float:
         """Ultimate strength in shear, Pa: 0.67 Sut (Shigley's eq. 10-30, memory)."""
-        return _SSU_OVER_SUT * self.Sut
+        return SSU_OVER_SUT * self.Sut
 
     @property
     def Ssy(self) -> float:
