@@ -1,25 +1,25 @@
-"""Rainflow counting as an algebra: pieces counted apart and joined give the count of the whole.
+"""Rainflow counting (ASTM E1049-85) as an algebra: count pieces apart, add them, repeat them, exactly.
 
-A cycle closes when three successive ranges X, Y, Z have Y <= X and Y <= Z; what never closes is the residue.
-Closed cycles and residue form a monoid, so streams, repeats and whole service lives are counted exactly
-without being written out. Closing at Y = Z too keeps the residue of a steady history short: of a run of equal
-ranges the middle ones are counted at once, as the same cycles that they would be as pairs of half cycles.
-
-References
-----------
-ASTM E1049-85 (2017), 5.4.4 (a history that happens once: every range of the residue is half a cycle) and
-5.4.5 (a repeating history: the residue closes on itself).
+A ``Count`` is what counting leaves of a history: its closed cycles and the residue of turning points that have not
+closed. Joining two residues and counting on gives what the whole history gives, for any split, so records are
+counted in blocks, on several cores, and a service life is ``n * pass``. See the manual, ``manual/counting.md``.
 """
 
 from __future__ import annotations
 
+import math
+import operator
+from collections.abc import Mapping
 from dataclasses import dataclass, field
+from functools import cached_property
 from itertools import pairwise
 from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from springlife.duty import stack
+from springlife.duty.cycles import NONE, Cycles, CycleTable, distinct, joined, pairs, times
 from springlife.errors import InputError, nearest
 
 if TYPE_CHECKING:
@@ -28,153 +28,295 @@ if TYPE_CHECKING:
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
 Residue = Literal["half", "repeat", "drop"]
-RESIDUES = ("half", "repeat", "drop")
-MOST = 2**63 - 1
-EXACT_INTEGERS = 2**53
+Gaps = Literal["error", "split"]
+
+EXACT = 2**53  # whole numbers up to here are floats
 
 
-@dataclass(frozen=True, eq=False)
-class CycleTable:
-    """Distinct cycles: ends ``low`` <= ``high`` and how many there are, arrays of shape (n,)."""
-
-    low: Floats
-    high: Floats
-    count: Floats
+_GAP = np.array([np.nan])
+_BAGS = ("closed", "ended_half", "ended_repeat")
 
 
-def _empty() -> Floats:
-    return np.empty(0)
+def _fixed(values: Any) -> Floats:
+    array = np.array(values, dtype=np.float64)
+    array.flags.writeable = False
+    return array
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True, eq=False, repr=False)
 class Count:
-    """Closed cycles as distinct unordered pairs with their number, and the residue's turning points.
+    """What counting leaves of a history; ``Count()`` is the empty history.
 
-    ``low``, ``high`` have shape (n,), sorted by low, then high; ``number`` holds whole numbers.
+    ``a + b`` is a then b, ``n * a`` is a repeated n times; both equal the count of the history written out.
+    ``==`` compares cycles, as unordered pairs with their number, and residue.
+
+    Parameters
+    ----------
+    residue : float array, shape (m,)
+        Turning points that have not closed. One NaN among them stands for all gaps: before it what precedes the
+        first gap, after it what follows the last one.
+    closed, ended_half, ended_repeat : Cycles
+        The closed cycles, and the residues of the pieces between gaps, to which nothing can be joined any more:
+        their half cycles (each 1), and their cycles when closed as a repeating history.
+    minimum, maximum : float
+        Extremes of the history, exact; NaN for the empty one.
+    samples : int
+        Number of samples, without gaps.
+    gate : float
+        Cycles with a range up to this are left out. A sum takes the larger gate of its parts.
+
+    Notes
+    -----
+    Counts form a monoid: ``+`` is associative and ``Count()`` its identity. The residue joined to itself reduces to
+    itself again, so ``n * a`` has n times the closed cycles, n - 1 times those that close at the joint, and the
+    residue of a.
     """
 
-    low: Floats = field(default_factory=_empty)
-    high: Floats = field(default_factory=_empty)
-    number: Ints = field(default_factory=lambda: np.empty(0, dtype=np.int64))
-    residue: Floats = field(default_factory=_empty)
+    residue: Floats = field(default_factory=lambda: _fixed([]))
+    closed: Cycles = NONE
+    ended_half: Cycles = NONE
+    ended_repeat: Cycles = NONE
+    minimum: float = math.nan
+    maximum: float = math.nan
+    samples: int = 0
+    gate: float = 0.0
+
+    @cached_property
+    def _distinct(self) -> Cycles:
+        return distinct(self.closed)
 
     @property
-    def minimum(self) -> float:
-        """Least value of the history, exact; NaN for an empty one."""
-        return float(self.residue.min()) if self.residue.size else float("nan")
+    def low(self) -> Floats:
+        """Lower ends of the closed cycles, one for each distinct pair, sorted."""
+        return self._distinct.low
 
     @property
-    def maximum(self) -> float:
-        """Greatest value of the history, exact; NaN for an empty one."""
-        return float(self.residue.max()) if self.residue.size else float("nan")
+    def high(self) -> Floats:
+        """Upper ends of the closed cycles."""
+        return self._distinct.high
+
+    @property
+    def number(self) -> Ints:
+        """How often each pair has closed."""
+        return self._distinct.number
 
     def __add__(self, other: Count) -> Count:
-        """Return the count of this history followed by the other."""
+        """Return the count of this history followed by the other one."""
         if not isinstance(other, Count):
             return NotImplemented
-        low, high, residue = _close(_reversals(np.concatenate([self.residue, other.residue])))
+        gate = max(self.gate, other.gate)
+        (*head, tail), (start, *rest) = pieces(self.residue), pieces(other.residue)
+        closed, seam = _join(tail, start, gate)
+        half, repeat = [self.ended_half, other.ended_half], [self.ended_repeat, other.ended_repeat]
+        if head and rest:  # what lies between two gaps has ended
+            half.append(_adjacent(seam, gate))
+            repeat.append(_recurring(seam, gate))
+            seams = [head[0], rest[0]]
+        else:
+            seams = [*head, seam, *rest]
         return Count(
-            *_merged(
-                np.concatenate([self.low, other.low, low]),
-                np.concatenate([self.high, other.high, high]),
-                np.concatenate([self.number, other.number, np.ones(low.size, dtype=np.int64)]),
-            ),
-            residue,
+            residue=_between_gaps(seams),
+            closed=joined(self.closed, other.closed, closed, gate=gate),
+            ended_half=joined(*half, gate=gate),
+            ended_repeat=joined(*repeat, gate=gate),
+            minimum=float(np.fmin(self.minimum, other.minimum)),
+            maximum=float(np.fmax(self.maximum, other.maximum)),
+            samples=self.samples + other.samples,
+            gate=gate,
         )
 
     def __radd__(self, other: object) -> Count:
-        """Let ``sum`` begin with its zero."""
-        return self if other == 0 else NotImplemented
+        """Let ``sum`` start at 0."""
+        return self if isinstance(other, int) and other == 0 else NotImplemented
 
-    def __rmul__(self, times: int) -> Count:
-        """Return the count of this history repeated, by repeated squaring."""
-        if isinstance(times, bool) or not isinstance(times, (int, np.integer)):
+    def __mul__(self, n: int) -> Count:
+        """Return the count of this history repeated ``n`` times in sequence.
+
+        Raises
+        ------
+        InputError
+            ``n`` is negative, or a pair would close more than 2**63 - 1 times.
+        """
+        try:
+            n = operator.index(n)
+        except TypeError:
             return NotImplemented
-        if times < 0:
-            raise InputError(f"a history cannot be repeated {times} times; give zero or a positive whole number")
-        result, power, left = Count(), self, int(times)
-        while left:
-            if left & 1:
-                result = result + power
-            left >>= 1
-            if left:
-                power = power + power
-        return result
-
-    __mul__ = __rmul__
-
-    def __eq__(self, other: object) -> bool:
-        """Equal when cycles and residue are."""
-        return isinstance(other, Count) and all(
-            np.array_equal(getattr(self, name), getattr(other, name)) for name in ("low", "high", "number", "residue")
+        if n < 0:
+            raise InputError(f"a count cannot be repeated {n} times; give a whole number from 0")
+        if n == 0:
+            return Count()
+        *head, tail = pieces(self.residue)
+        closed, seam = _join(tail, head[0] if head else tail, self.gate)
+        half, repeat = times(n, self.ended_half), times(n, self.ended_repeat)
+        if head:
+            half = joined(half, times(n - 1, _adjacent(seam, self.gate)))
+            repeat = joined(repeat, times(n - 1, _recurring(seam, self.gate)))
+        return Count(
+            residue=self.residue,
+            closed=joined(times(n, self.closed), times(n - 1, closed)),
+            ended_half=half,
+            ended_repeat=repeat,
+            minimum=self.minimum,
+            maximum=self.maximum,
+            samples=n * self.samples,
+            gate=self.gate,
         )
 
-    __hash__ = None  # type: ignore[assignment]  # arrays have none
+    __rmul__ = __mul__
 
-    def table(self, residue: Residue = "half") -> CycleTable:
-        """Return the cycles with the residue read as asked; no cycle of zero range, one row a distinct pair.
-
-        Parameters
-        ----------
-        residue : {"half", "repeat", "drop"}
-            Half cycles; closed as a repeating history, which is what one more repeat adds; or left out.
-        """
-        low, high, count, _, _ = traced(self.residue, residue)
-        return CycleTable(
-            *_merged(
-                np.concatenate([self.low, low]),
-                np.concatenate([self.high, high]),
-                np.concatenate([self.number.astype(np.float64), count]),
+    def __eq__(self, other: object) -> bool:
+        """Compare cycles as unordered pairs with their number, and the residue."""
+        if not isinstance(other, Count):
+            return NotImplemented
+        return np.array_equal(self.residue, other.residue, equal_nan=True) and all(
+            distinct(mine).same(distinct(theirs))
+            for mine, theirs in (
+                (self.closed, other.closed),
+                (self.ended_half, other.ended_half),
+                (self.ended_repeat, other.ended_repeat),
             )
         )
 
+    __hash__ = None  # type: ignore[assignment]
+
+    def __repr__(self) -> str:
+        """Show sizes rather than arrays."""
+        span = f", {self.minimum:g} to {self.maximum:g}" if self.samples else ""
+        return f"Count({self.samples} samples{span}, {self.low.size} pairs closed, {self.residue.size} points open)"
+
+    def settled(self, residue: Residue = "half") -> CycleTable:
+        """Return the cycles that nothing joined later can change: the closed ones and pieces between gaps.
+
+        Parameters
+        ----------
+        residue : "half", "repeat", "drop"
+            How the residue of a piece between gaps is read; see ``table``.
+        """
+        return CycleTable.of((self.closed, 1.0), *self._ended(residue))
+
+    def table(self, residue: Residue = "half") -> CycleTable:
+        """Return the cycles with the residue read, one row for each distinct pair, sorted by low and high.
+
+        Parameters
+        ----------
+        residue : "half", "repeat", "drop"
+            ``"half"``: every adjacent pair is one half cycle (ASTM E1049-85 5.4.4), for a history that happens
+            once. ``"repeat"``: the history recurs, and these are the cycles that one more pass adds (5.4.5).
+            ``"drop"``: only what has closed.
+
+        Raises
+        ------
+        InputError
+            Another word for ``residue``.
+        """
+        low, high, *_ = traced(self.residue, residue)
+        kept = high - low > self.gate
+        rows = pairs(low[kept], high[kept])
+        weight = 0.5 if residue == "half" else 1.0
+        return CycleTable.of((self.closed, 1.0), *self._ended(residue), (rows, weight))
+
+    def _ended(self, residue: Residue) -> list[tuple[Cycles, float]]:
+        _check_residue(residue)
+        return {"half": [(self.ended_half, 0.5)], "repeat": [(self.ended_repeat, 1.0)], "drop": []}[residue]
+
     def cycles(self, residue: Residue = "half") -> pd.DataFrame:
-        """Return :meth:`table` as a DataFrame with columns low, high, range, mean, count."""
+        """Return ``table`` as a DataFrame with columns low, high, range, mean, count; a half cycle counts 0.5."""
         import pandas as pd
 
-        table = self.table(residue)
-        low, high, count = table.low, table.high, table.count
-        return pd.DataFrame({"low": low, "high": high, "range": high - low, "mean": (low + high) / 2, "count": count})
+        t = self.table(residue)
+        mean = t.low + (t.high - t.low) / 2
+        return pd.DataFrame({"low": t.low, "high": t.high, "range": t.high - t.low, "mean": mean, "count": t.count})
 
-    def mapped(self, scale: float, offset: float) -> Count:
-        """Return the count of ``scale * x + offset``; a negative scale turns the cycles over."""
-        ends = (scale * self.low + offset, scale * self.high + offset)
-        low, high = ends if scale >= 0 else ends[::-1]
-        kept = low < high
-        cycles = _merged(low[kept], high[kept], self.number[kept])
-        return Count(*cycles) + count(scale * self.residue + offset)
+    def mapped(self, scale: float, offset: float = 0.0) -> Count:
+        """Return the count of ``scale * x + offset``; a negative scale turns the history over.
 
-    def to_dict(self) -> dict[str, Any]:
-        """Give the count as plain lists, exactly."""
-        return {name: getattr(self, name).tolist() for name in ("low", "high", "number", "residue")}
-
-    @classmethod
-    def from_dict(cls, data: dict[str, Any]) -> Count:
-        """Rebuild a count from :meth:`to_dict`."""
-        return cls(
-            np.array(data["low"], dtype=np.float64),
-            np.array(data["high"], dtype=np.float64),
-            np.array(data["number"], dtype=np.int64),
-            np.array(data["residue"], dtype=np.float64),
+        Raises
+        ------
+        InputError
+            A scale or offset that is not finite.
+        """
+        if not (math.isfinite(scale) and math.isfinite(offset)):
+            raise InputError(f"scale {scale!r} and offset {offset!r} must be finite numbers")
+        gate = abs(scale) * self.gate
+        # Rounding can make neighbours equal, so the residue goes through the stack again.
+        again = [_join(_fixed([]), scale * piece + offset, gate) for piece in pieces(self.residue)]
+        ends = sorted((scale * self.minimum + offset, scale * self.maximum + offset))
+        return Count(
+            residue=_between_gaps([points for _, points in again]),
+            closed=joined(self.closed.mapped(scale, offset), *(closed for closed, _ in again)),
+            ended_half=self.ended_half.mapped(scale, offset),
+            ended_repeat=self.ended_repeat.mapped(scale, offset),
+            minimum=ends[0],
+            maximum=ends[1],
+            samples=self.samples,
+            gate=gate,
         )
 
+    def to_dict(self) -> dict[str, Any]:
+        """Give the count for JSON; ``from_dict`` returns it exactly."""
+        return {
+            "gate": self.gate,
+            "samples": self.samples,
+            "minimum": self.minimum if self.samples else None,
+            "maximum": self.maximum if self.samples else None,
+            "residue": [piece.tolist() for piece in pieces(self.residue)],
+            **{
+                name: {"low": bag.low.tolist(), "high": bag.high.tolist(), "number": bag.number.tolist()}
+                for name in _BAGS
+                for bag in [distinct(getattr(self, name))]
+            },
+        }
 
-def count(samples: ArrayLike, *, gate: float = 0.0, nan: Literal["error", "split"] = "error") -> Count:
+    @classmethod
+    def from_dict(cls, given: Mapping[str, Any]) -> Count:
+        """Return the count that ``to_dict`` gave.
+
+        Raises
+        ------
+        InputError
+            A key is missing, or its value is none that a count gives.
+        """
+        try:
+            bags = {name: Cycles(**_arrays(given[name])) for name in _BAGS}
+            return cls(
+                residue=_between_gaps([np.array(piece, dtype=np.float64) for piece in given["residue"]]),
+                minimum=math.nan if given["minimum"] is None else float(given["minimum"]),
+                maximum=math.nan if given["maximum"] is None else float(given["maximum"]),
+                samples=operator.index(given["samples"]),
+                gate=float(given["gate"]),
+                **bags,
+            )
+        except KeyError as error:
+            raise InputError(f"count: key {error} is missing; give what to_dict returned") from error
+        except (TypeError, ValueError, OverflowError) as error:
+            raise InputError(f"count: {error}; give what to_dict returned") from error
+
+
+def count(samples: ArrayLike, *, gate: float = 0.0, nan: Gaps = "error") -> Count:
     """Count the rainflow cycles of a history.
 
     Parameters
     ----------
-    samples : array_like, shape (n,)
-        Numbers; whole numbers are kept exactly.
+    samples : array-like of numbers, shape (n,), any unit
+        Whole numbers are exact up to 2**53 and refused beyond.
     gate : float
-        Closed cycles with a range up to this are dropped as they close, which leaves merging exact.
-    nan : {"error", "split"}
-        What NaN means: an error, or the border between two pieces that follow each other.
+        Cycles with a range up to this are left out, after counting, so that pieces still add up exactly. It is not
+        the hysteresis filter of the trade, which smooths the samples before counting and shifts what remains.
+    nan : "error", "split"
+        With ``"split"`` a NaN ends a piece: what precedes it is never joined to what follows.
+
+    Returns
+    -------
+    Count
 
     Raises
     ------
     InputError
-        Not one-dimensional, not numbers, not finite, or whole numbers too large to be kept exactly.
+        Samples that are not one row of finite numbers; the message names the first index.
+
+    References
+    ----------
+    ASTM E1049-85 (2017), 5.4.4.
     """
     tally = Tally(gate=gate, nan=nan)
     tally.feed(samples)
@@ -182,165 +324,189 @@ def count(samples: ArrayLike, *, gate: float = 0.0, nan: Literal["error", "split
 
 
 class Tally:
-    """Counts a history fed in blocks, in order, exactly as the whole."""
+    """Count a history that comes in chunks.
 
-    def __init__(self, *, gate: float = 0.0, nan: Literal["error", "split"] = "error") -> None:
+    Parameters
+    ----------
+    gate, nan
+        See ``count``.
+    """
+
+    def __init__(self, *, gate: float = 0.0, nan: Gaps = "error") -> None:
         """Start with nothing counted."""
-        if not (np.isfinite(gate) and gate >= 0):
-            raise InputError(f"gate is {gate}; it must be zero or a positive range")
-        self.gate, self.nan = gate, nan
-        self._position = 0
-        self._total = Count()
+        if not (math.isfinite(gate) and gate >= 0):
+            raise InputError(f"gate is {gate!r}; give a range of 0 or more, in the unit of the samples")
+        if nan not in ("error", "split"):
+            raise InputError(f"nan is {nan!r}; {nearest(nan, ('error', 'split'))}")
+        self._total = Count(gate=gate)
+        self._split = nan == "split"
+        self._seen = 0
 
-    def feed(self, samples: ArrayLike) -> None:
-        """Count the next block."""
-        block = _floats(samples, self._position, self.nan)
-        self._position += block.size
-        block = block[~np.isnan(block)]
-        low, high, residue = _close(_reversals(block))
-        wide = high - low > self.gate
-        piece = Count(*_merged(low[wide], high[wide], np.ones(int(wide.sum()), dtype=np.int64)), residue)
-        joined = self._total + piece
-        if self.gate:
-            wide = joined.high - joined.low > self.gate
-            joined = Count(joined.low[wide], joined.high[wide], joined.number[wide], joined.residue)
-        self._total = joined
+    def feed(self, chunk: ArrayLike) -> None:
+        """Count the next samples.
+
+        Raises
+        ------
+        InputError
+            See ``count``; the index counts from the first chunk's first sample.
+        """
+        values = _numbers(chunk)
+        gaps = self._gaps(values)
+        for number, piece in enumerate(np.split(values, gaps)):
+            if number:
+                self._total += Count(residue=_GAP, gate=self._total.gate)
+                piece = piece[1:]
+            self._total += _piece(piece, self._total.gate)
+        self._seen += values.size
+
+    def _gaps(self, values: Floats) -> NDArray[np.intp]:
+        odd = np.flatnonzero(~np.isfinite(values))
+        for i in odd[:1] if not self._split else odd[np.isinf(values[odd])][:1]:
+            remedy = "mend it" if self._split or np.isinf(values[i]) else 'mend it, or count with nan="split"'
+            raise InputError(f"sample {self._seen + i} is {values[i]}, which cannot be counted; {remedy}")
+        return odd
 
     def result(self) -> Count:
         """Return the count of everything fed so far."""
         return self._total
 
 
-def traced(points: ArrayLike, residue: Residue) -> tuple[Floats, Floats, Floats, Ints, Ints]:
-    """Return every cycle of a sequence with the positions of its two ends.
+def traced(points: ArrayLike, residue: Residue = "half") -> tuple[Floats, Floats, Floats, Ints, Ints]:
+    """Count a history and say where each cycle has its ends.
 
     Parameters
     ----------
-    points : array_like, shape (n,)
-        The history; of equal neighbours the first is meant.
-    residue : {"half", "repeat", "drop"}
-        As in :meth:`Count.table`.
+    points : array-like of numbers, shape (n,)
+        Samples or turning points; NaN separates pieces.
+    residue : "half", "repeat", "drop"
+        See ``Count.table``. With ``"repeat"`` the last piece goes on into the first.
 
     Returns
     -------
-    low, high, count, index_low, index_high : ndarray, shape (m,)
-        One row a cycle, in the order of closing.
+    low, high, count : float arrays, shape (m,)
+        One row for each cycle; a half cycle counts 0.5.
+    index_low, index_high : int arrays, shape (m,)
+        Positions of the two ends in ``points``; on a plateau, its first sample.
+
+    Raises
+    ------
+    InputError
+        See ``count``.
     """
-    if residue not in RESIDUES:
-        raise InputError(f"residue {residue!r} is not known; {nearest(str(residue), RESIDUES)}")
-    values = np.asarray(points, dtype=np.float64).tolist()
-    pairs, rest = _stack(values, _reversal_positions(values, range(len(values))))
-    number = [1.0] * len(pairs)
+    _check_residue(residue)
+    values = _numbers(points)
+    if np.isinf(values).any():
+        i = int(np.flatnonzero(np.isinf(values))[0])
+        raise InputError(f"sample {i} is {values[i]}, which cannot be counted; mend it")
+    seen = values.tolist()
+    gaps = [-1, *np.flatnonzero(np.isnan(values)).tolist(), values.size]
+    rows: list[tuple[list[int], list[int]]] = []
+
+    def follow(order: list[int]) -> list[int]:
+        low, high, rest = stack.trace(seen, order)
+        rows.append((low, high))
+        return rest
+
+    rests = [follow(list(range(a + 1, b))) for a, b in pairwise(gaps)]
+    if residue == "repeat":
+        first, *middle, last = rests if len(rests) > 1 else [[], *rests]
+        for rest in (*middle, follow(last + first)):
+            follow(rest + rest)
+    index = [np.array([i for row in rows for i in row[end]], dtype=np.int64) for end in (0, 1)]
+    number = np.ones(index[0].size)
     if residue == "half":
-        open_pairs = list(pairwise(rest))
-        pairs, number = pairs + open_pairs, number + [0.5] * len(open_pairs)
-    elif residue == "repeat":
-        closing, _ = _stack(values, _reversal_positions(values, rest + rest))
-        pairs, number = pairs + closing, number + [1.0] * len(closing)
-    ends = [(a, b) if values[a] < values[b] else (b, a) for a, b in pairs]
-    at_low = np.array([a for a, _ in ends], dtype=np.int64)
-    at_high = np.array([b for _, b in ends], dtype=np.int64)
-    array = np.asarray(values)
-    return array[at_low], array[at_high], np.array(number), at_low, at_high
+        begin = np.array([i for rest in rests for i in rest[:-1]], dtype=np.int64)
+        end = np.array([i for rest in rests for i in rest[1:]], dtype=np.int64)
+        up = values[begin] < values[end]
+        index = [
+            np.concatenate([index[0], np.where(up, begin, end)]),
+            np.concatenate([index[1], np.where(up, end, begin)]),
+        ]
+        number = np.concatenate([number, np.full(begin.size, 0.5)])
+    return values[index[0]], values[index[1]], number, index[0], index[1]
 
 
-def _floats(samples: ArrayLike, position: int, nan: str) -> Floats:
-    """Take samples as floats, or say which one cannot be."""
-    array = np.asarray(samples)
+def pieces(residue: Floats) -> list[Floats]:
+    """Return the turning points before the first and after the last gap, or all of them when there is none."""
+    gaps = np.flatnonzero(np.isnan(residue))
+    return [residue[: gaps[0]], residue[gaps[-1] + 1 :]] if gaps.size else [residue]
+
+
+def _between_gaps(parts: list[Floats]) -> Floats:
+    return _fixed(parts[0] if len(parts) == 1 else np.concatenate([parts[0], _GAP, parts[-1]]))
+
+
+def _piece(values: Floats, gate: float) -> Count:
+    """Count a history without gaps."""
+    if not values.size:
+        return Count(gate=gate)
+    closed, points = _join(_GAP[:0], values, gate)
+    return Count(
+        residue=points,
+        closed=closed,
+        minimum=float(points.min()),
+        maximum=float(points.max()),
+        samples=values.size,
+        gate=gate,
+    )
+
+
+def _join(first: Floats, then: Floats, gate: float) -> tuple[Cycles, Floats]:
+    """Count on from a residue: what closes, and the residue after it."""
+    points: list[float] = first.tolist()
+    low: list[float] = []
+    high: list[float] = []
+    stack.push(points, then.tolist(), low, high)
+    return joined(pairs(np.array(low), np.array(high)), gate=gate), _fixed(points)
+
+
+def _adjacent(points: Floats, gate: float) -> Cycles:
+    """Return the half cycles of a residue."""
+    low, high = np.minimum(points[:-1], points[1:]), np.maximum(points[:-1], points[1:])
+    return joined(pairs(low, high), gate=gate)
+
+
+def _recurring(points: Floats, gate: float) -> Cycles:
+    """Return the cycles of a residue that recurs: what closes when it follows itself."""
+    return _join(points, points, gate)[0]
+
+
+def _check_residue(residue: str) -> None:
+    if residue not in ("half", "repeat", "drop"):
+        raise InputError(f"residue is {residue!r}; {nearest(residue, ('half', 'repeat', 'drop'))}")
+
+
+def _numbers(samples: ArrayLike) -> Floats:
+    """Return samples as float64, exactly, or say why not."""
+    if np.ma.is_masked(samples):
+        raise InputError('samples are masked in places; fill those with NaN and count with nan="split"')
+    try:
+        array = np.asarray(samples)
+    except ValueError as error:
+        raise InputError(f"samples are not one row of numbers: {error}") from error
     if array.ndim != 1:
-        raise InputError(f"samples have {array.ndim} dimensions; give one channel as a one-dimensional sequence")
-    if array.size and array.dtype.kind not in "biuf":
-        raise InputError(f"samples are of type {array.dtype}; give numbers")
-    if array.dtype.kind in "iu" and array.size:
-        largest = max(abs(int(array.min())), abs(int(array.max())))
-        if largest > EXACT_INTEGERS:
-            raise InputError(f"whole number {largest} is past 2^53 and would be rounded; subtract an offset first")
-    values = array.astype(np.float64)
-    infinite = np.flatnonzero(np.isinf(values))
-    if infinite.size:
-        raise InputError(f"sample {position + int(infinite[0])} is infinite; every sample must be a finite number")
-    missing = np.flatnonzero(np.isnan(values))
-    if missing.size and nan != "split":
-        raise InputError(f'sample {position + int(missing[0])} is NaN; repair it, or count the pieces with nan="split"')
-    return values
+        raise InputError(f"samples have the shape {array.shape}; give one row of numbers, such as one column")
+    if not array.size:
+        return np.empty(0)
+    kind = array.dtype
+    if kind.kind not in "iuf" or kind.itemsize > 8:
+        raise InputError(f"samples are of type {kind}; give integers or floats of up to 64 bits")
+    if (kind.kind in "iu" and kind.itemsize == 8) or not isinstance(samples, np.ndarray):
+        _check_exact(samples, array)
+    return array.astype(np.float64, copy=False)
 
 
-def _reversals(values: Floats) -> Floats:
-    """Return first and last value and the turning points between, equal neighbours once."""
-    if values.size < 2:
-        return values
-    distinct: Floats = values[np.concatenate([[True], values[1:] != values[:-1]])]
-    if distinct.size < 3:
-        return distinct
-    rising = distinct[1:] > distinct[:-1]
-    turning: Floats = distinct[np.concatenate([[True], rising[1:] != rising[:-1], [True]])]
-    return turning
+def _check_exact(samples: ArrayLike, array: NDArray[Any]) -> None:
+    """Refuse whole numbers that a float cannot hold, also those that a list mixes with floats."""
+    for i in np.flatnonzero((array > EXACT) | (array < -EXACT)):
+        value = samples[i] if isinstance(samples, (list, tuple)) else array[i]
+        if isinstance(value, (int, np.integer)):
+            raise InputError(f"sample {i} is {value}; whole numbers are counted exactly up to 2**53 only")
 
 
-def _close(points: Floats) -> tuple[Floats, Floats, Floats]:
-    """Close every cycle of a sequence of turning points: low, high of each, and the residue.
-
-    All closable ranges that do not touch are taken out together while that pays; a stack does the rest.
-    """
-    lows, highs = [], []
-    while points.size > 64:
-        a, b, c, d = points[:-3], points[1:-2], points[2:-1], points[3:]
-        # Y < Z here: ranges that close then never touch, and the stack below takes the ties.
-        at = 1 + np.flatnonzero(np.where(b > a, (c >= a) & (d > b), (c <= a) & (d < b)))
-        if at.size * 100 < points.size:
-            break
-        lows.append(np.minimum(points[at], points[at + 1]))
-        highs.append(np.maximum(points[at], points[at + 1]))
-        kept = np.ones(points.size, dtype=bool)
-        kept[at] = kept[at + 1] = False
-        points = points[kept]
-    values = points.tolist()
-    pairs, rest = _stack(values, list(range(len(values))))
-    lows.append(np.array([min(values[a], values[b]) for a, b in pairs], dtype=np.float64))
-    highs.append(np.array([max(values[a], values[b]) for a, b in pairs], dtype=np.float64))
-    return np.concatenate(lows), np.concatenate(highs), points[rest]
-
-
-def _reversal_positions(values: list[float], positions: Any) -> list[int]:
-    """Return which positions are turning points of the sequence they pick from ``values``."""
-    kept: list[int] = []
-    for i in positions:
-        if kept and values[i] == values[kept[-1]]:
-            continue
-        if len(kept) > 1 and (values[kept[-1]] > values[kept[-2]]) == (values[i] > values[kept[-1]]):
-            kept[-1] = i
-        else:
-            kept.append(i)
-    return kept
-
-
-def _stack(values: list[float], positions: list[int]) -> tuple[list[tuple[int, int]], list[int]]:
-    """Close cycles over turning points: pairs of positions, and the positions left.
-
-    Ranges are compared by their ends, in order, rather than by differences: no rounding decides a tie.
-    """
-    pairs: list[tuple[int, int]] = []
-    rest: list[int] = []
-    for i in positions:
-        rest.append(i)
-        while len(rest) >= 4:
-            a, b, c, d = (values[j] for j in rest[-4:])
-            inside = min(a, b) <= min(b, c) and max(b, c) <= max(a, b)
-            closes = min(c, d) <= min(b, c) and max(b, c) <= max(c, d)
-            if not (inside and closes):
-                break
-            pairs.append((rest[-3], rest[-2]))
-            del rest[-3:-1]
-    return pairs, rest
-
-
-def _merged(low: Floats, high: Floats, number: NDArray[Any]) -> tuple[Floats, Floats, NDArray[Any]]:
-    """Add up equal pairs and sort them."""
-    if low.size == 0:
-        return low, high, number
-    order = np.lexsort((high, low))
-    low, high, number = low[order], high[order], number[order]
-    first = np.concatenate([[True], (low[1:] != low[:-1]) | (high[1:] != high[:-1])])
-    if number.dtype.kind == "i" and float(number.sum(dtype=np.float64)) > MOST / 2:
-        raise InputError("more than 4e18 cycles; a history this long cannot be counted exactly")
-    return low[first], high[first], np.add.reduceat(number, np.flatnonzero(first))
+def _arrays(given: Mapping[str, Any]) -> dict[str, Any]:
+    low, high = (np.array(given[name], dtype=np.float64) for name in ("low", "high"))
+    number = np.array(given["number"], dtype=np.int64)
+    if not (low.ndim == 1 and low.shape == high.shape == number.shape and (low < high).all() and (number > 0).all()):
+        raise InputError("count: low, high and number do not make cycles; give what to_dict returned")
+    return {"low": low, "high": high, "number": number}
