@@ -353,7 +353,7 @@ def test_nothing_is_overwritten_unasked(tmp_path: Path) -> None:
     write_curve(fit, path, title="t", source="s", force=True)
     assert path.read_bytes() == first
     assert list(tmp_path.iterdir()) == [path]
-    with pytest.raises(FileError, match="cannot be written"):
+    with pytest.raises(FileError, match="does not exist; make it first"):
         write_curve(fit, tmp_path / "none" / "own.toml", title="t", source="s")
 
 

@@ -7,6 +7,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
+from hashlib import sha256
 from pathlib import Path
 from typing import Any
 
@@ -74,6 +75,21 @@ class Judgement:
     factors_fixed_preload: dict[str, float | None] | None
     band: tuple[BandRow, ...]
 
+    @cached_property
+    def damaging_cycles(self) -> float:
+        """Cycles a pass that together do 99 % of the damage: the rest may be as many as it likes."""
+        total = float(self.cycle_damage.sum())
+        if not 0 < total < np.inf:
+            return 0.0
+        order = np.argsort(self.cycle_damage)[::-1]
+        enough = int(np.searchsorted(np.cumsum(self.cycle_damage[order]), 0.99 * total)) + 1
+        return float(self.cycles.count[order[:enough]].sum())
+
+    @property
+    def extrapolated(self) -> bool:
+        """Whether the life stands for more damaging cycles than the endurance data's basis."""
+        return self.life_passes is not None and self.life_passes * self.damaging_cycles > self.model.curve.valid_to
+
 
 @dataclass(frozen=True)
 class Assessment:
@@ -104,6 +120,15 @@ class Assessment:
         return (None if passes is None else passes * per_pass), unit
 
     @property
+    def reliability(self) -> str:
+        """What the endurance data say about the share of springs that reach the life."""
+        curve = self.judgement.model.curve if self.judgement else None
+        if curve is None or curve.reliability is None:
+            return "nominal strengths, reliability not stated by the source"
+        at = "" if curve.confidence is None else f" at {100 * curve.confidence:g} % confidence"
+        return f"{100 * curve.reliability:g} % of springs{at}, as the curve file states"
+
+    @property
     def mover(self) -> Mover | None:
         """The published choice that moves the life most."""
         if self.judgement is None:
@@ -118,10 +143,12 @@ class Assessment:
 
     @property
     def inputs(self) -> tuple[tuple[str, str], ...]:
-        """Name and SHA-256 of the case file and of every record."""
-        records = () if self.duty is None else self.duty.events
-        read = [(str(event.record), event.sha256) for event in records if event.record and event.sha256]
-        return ((self.case.path.name, self.case.sha256), *read)
+        """Name and SHA-256 of every file read: the case, its grades and curve files, the records."""
+        case, events = self.case, () if self.duty is None else self.duty.events
+        named = [case.spring.grade_file, None if case.judge.endurance in BASES else case.judge.endurance]
+        beside = [(name, sha256(case.beside(name).read_bytes()).hexdigest()) for name in named if name]
+        read = [(event.record, event.sha256) for event in events if event.record and event.sha256]
+        return ((case.path.name, case.sha256), *beside, *read)
 
     def to_dict(self) -> dict[str, Any]:
         """Give everything for JSON; SI values under keys that name the unit."""

@@ -285,14 +285,7 @@ def of_scope(spring: HelicalSpring, case: Case, say: UnitSystem) -> Iterator[Fin
 
 def of_life(judgement: Judgement, case: Case) -> Iterator[Finding]:
     """Yield a warning when the duty asks for more damaging cycles than the endurance data's basis."""
-    damage, cycles = judgement.cycle_damage, judgement.cycles
-    total = float(damage.sum())
-    if not 0 < total < np.inf:
-        return
-    order = np.argsort(damage)[::-1]
-    # The cycles that together do 99 % of the damage: the rest may be as many as it likes.
-    most = order[: int(np.searchsorted(np.cumsum(damage[order]), 0.99 * total)) + 1]
-    asked = float(cycles.count[most].sum()) * case.duty.target_passes
+    asked = judgement.damaging_cycles * case.duty.target_passes
     basis = judgement.model.curve.valid_to
     if asked > basis:
         message = (

@@ -30,6 +30,7 @@ def as_dict(assessment: Assessment) -> dict[str, Any]:
     data |= _numbers(judgement) if judgement else _NO_NUMBERS
     data |= {
         "band_moved_most_by": assessment.mover.sentence() if assessment.mover else None,
+        "reliability": assessment.reliability,
         "judged_by": case.judge.model_dump(),
         "limits_changed": dict(case.input.limits),
         "findings": [finding.to_dict() for finding in assessment.findings],
@@ -44,6 +45,7 @@ _NO_NUMBERS: dict[str, Any] = {
     "damage_per_pass": None,
     "damage_at_target": None,
     "life_passes": None,
+    "life_extrapolated": None,
     "stress_margin": None,
     "margin_governed_by": None,
     "spring": None,
@@ -61,6 +63,7 @@ def _numbers(j: Judgement) -> dict[str, Any]:
         "damage_per_pass": finite(j.damage_per_pass),
         "damage_at_target": finite(j.damage_at_target),
         "life_passes": j.life_passes,
+        "life_extrapolated": j.extrapolated,
         "stress_margin": j.stress_margin,
         "margin_governed_by": j.margin_governed_by,
         "spring": spring_facts(j.spring) | {"Sse_Pa": j.model.curve.strength_at_knee},

@@ -31,7 +31,7 @@ VERDICTS = {
 }
 LEVEL_STYLE = {"stop": "bold red", "warn": "yellow", "note": ""}
 PIPED_WIDTH = 100
-BEYOND = 1e7  # targets: a longer life is a number without meaning
+BEYOND = 1e5  # targets: a longer life is a number without meaning
 
 
 def console_for_output() -> Console:
@@ -113,7 +113,9 @@ def _summary(result: Assessment, j: Judgement) -> list[tuple[str, str]]:
         margin = f"{significant(j.stress_margin, 3)} on every stress ({j.margin_governed_by} governs)"
     return [
         ("life", f"{quantity_of_life(result, j.life_passes)}, target {case.duty.target} "
-                 f"({significant(passes)} passes of {case.duty.one_pass})"),
+                 f"({significant(passes)} passes of {case.duty.one_pass})"
+                 + (f"; extrapolated past the {significant(curve.valid_to)} cycles of the data"
+                    if j.extrapolated else "")),
         ("damage", f"{significant(j.damage_at_target, 3)} at the target, {case.judge.allowed_damage:g} allowed; "
                    f"{significant(j.damage_per_pass, 3)} a pass"),
         ("margin", margin),
@@ -128,7 +130,8 @@ def _summary(result: Assessment, j: Judgement) -> list[tuple[str, str]]:
                    f"surge {say(spring.surge_frequency, 'frequency', 3)}"),
         ("stress", f"{case.judge.stress_factor} factor on "
                    f"{'mean and amplitude' if case.judge.curvature_on == 'both' else 'the amplitude'}; "
-                   f"residue: {case.judge.residue}; reliability: nominal, not stated by the source"),
+                   f"residue: {case.judge.residue}"),
+        ("reliability", result.reliability),
     ]  # fmt: skip
 
 
@@ -256,7 +259,7 @@ def print_grades(grades: Sequence[Grade], *, full: bool) -> None:
             (
                 entry.name,
                 entry.title,
-                f"{METRIC.number(low, 'length', 3)} to {METRIC.number(high, 'length', 3)}",
+                f"{METRIC.number(low, 'length', 5)} to {METRIC.number(high, 'length', 5)}",
                 f"{METRIC.number(entry.tensile_strength(high), 'stress')} to "
                 f"{METRIC.number(entry.tensile_strength(low), 'stress')}",
                 METRIC.number(entry.greatest_temperature, "temperature", 3),

@@ -15,7 +15,8 @@ from typing import Any
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from springlife.errors import FileError, InputError
+from springlife.errors import InputError
+from springlife.files import write_file
 from springlife.strength.criteria import Criterion, Floats
 from springlife.strength.curve import FORMAT, LifeCurve
 from springlife.strength.endurance import data
@@ -258,9 +259,6 @@ def write_curve(
     FileError
         The file is there already, or cannot be written.
     """
-    path = Path(path)
-    if path.exists() and not force:
-        raise FileError(f"{path}: is there already; give another name, or force it to be replaced")
     head = [
         f"format = {FORMAT}",
         f"title = {_text(title)}",
@@ -270,12 +268,7 @@ def write_curve(
         *([] if confidence is None else [f"confidence = {share(confidence, 'confidence'):g}"]),
     ]
     text = "\n".join([*head, *(row for line in fit.lines for row in _group_rows(line, reliability, confidence)), ""])
-    beside = path.with_name(f".{path.name}.part")
-    try:
-        beside.write_text(text, encoding="utf-8")
-        beside.replace(path)
-    except OSError as error:
-        raise FileError(f"{path}: cannot be written ({error.strerror}); check the folder") from error
+    write_file(path, lambda place: place.write_text(text, encoding="utf-8"), force=force)
 
 
 def _group_rows(line: Line, reliability: float, confidence: float | None) -> list[str]:
