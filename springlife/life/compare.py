@@ -16,6 +16,7 @@ from springlife.life.assess import Assessment, assess, judge, part_of
 from springlife.life.case import Case, load_case
 from springlife.life.findings import Finding, found
 from springlife.life.reading import Duty
+from springlife.life.scatter import Estimate, b_lives
 from springlife.spring.helical import HelicalSpring
 
 Hold = Literal["stroke", "force", "length", "rate"]
@@ -26,6 +27,8 @@ HELD = {
     "rate": "rate and deflections as of the drawn spring: every option's active coils are changed to keep the rate",
 }
 DRAWN = "as drawn"
+MOST_SCATTERED = 8  # options whose B10 is drawn; a grid of hundreds goes without
+B10_SAMPLES = 4096  # springs drawn for each
 
 
 @dataclass(frozen=True)
@@ -39,6 +42,7 @@ class Option:
     peak_stress: float | None  # Pa
     relative_cost: float | None  # mass in kg times the grade's relative cost; peening not included
     lives: dict[str, float | None]  # passes by criterion on the case's endurance basis and Miner reading
+    b10: Estimate | None = None  # passes that 90 % of springs reach; None without damage or in a large grid
     best_for: tuple[str, ...] = ()  # "mass", "cost": no other option is lighter (cheaper) and lives longer
 
     @property
@@ -63,6 +67,7 @@ class Option:
             "peak_stress_Pa": self.peak_stress,
             "relative_cost": self.relative_cost,
             "life_passes_by_criterion": self.lives,
+            "B10_passes": self.b10.to_dict() if self.b10 else None,
             "best_for": list(self.best_for),
             "assessment": self.assessment.to_dict(),
         }
@@ -112,6 +117,8 @@ def compare(case: Case | str | Path, hold: Hold = "stroke") -> Comparison:
     pinned = drawn.duty.pinned(base)
     options = [_option(DRAWN, drawn)]
     options += [_option(variant.name, _judge(variant, base, pinned, hold)) for variant in variants(case)]
+    if len(options) <= MOST_SCATTERED:
+        options = [replace(option, b10=_b10(option.assessment)) for option in options]
     return Comparison(case, hold, _marked(options), _differences(base, options, hold))
 
 
@@ -138,6 +145,11 @@ def _judge(variant: Case, base: HelicalSpring, pinned: Duty, hold: Hold) -> Asse
     if hold == "length" and spring is not None:
         return judge(variant, pinned.mapped(1.0, spring.free_length - base.free_length))
     return judge(variant, pinned)
+
+
+def _b10(result: Assessment) -> Estimate | None:
+    lives = b_lives(result, samples=B10_SAMPLES)
+    return lives["B10"] if lives else None
 
 
 def _option(name: str, result: Assessment) -> Option:

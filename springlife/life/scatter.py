@@ -183,6 +183,28 @@ def scatter(case: Case | str | Path, *, samples: int | None = None, seed: int | 
     )
 
 
+def b_lives(assessment: Assessment, *, samples: int | None = None) -> dict[str, Estimate] | None:
+    """Return the B lives (passes) of a case already judged, without reading again; None when nothing takes damage.
+
+    Parameters
+    ----------
+    assessment : Assessment
+        Judged, with its duty as it is to be evaluated.
+    samples : int, optional
+        In place of the case's.
+    """
+    if assessment.duty is None or assessment.judgement is None:
+        return None
+    given = _settings(assessment.case, samples, None)
+    spreads = spreads_of(assessment.case, assessment.judgement.spring)
+    springs = Population(assessment.case, assessment.duty, assessment.judgement, spreads)
+    seeds = np.random.SeedSequence(given.seed).spawn(REPLICATES)
+    drawn = [springs.outcome(_points(len(spreads), given.samples // REPLICATES, one)) for one in seeds]
+    if not np.isfinite(np.concatenate([one.passes for one in drawn])).any():
+        return None
+    return {f"B{100 * part:g}": _quantile(drawn, part) for part in B_LIVES}
+
+
 def _settings(case: Case, samples: int | None, seed: int | None) -> ScatterInput:
     """Return the case's [scatter] table with the arguments in place of its samples and seed."""
     from pydantic import ValidationError

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+from springlife.life.compare import B10_SAMPLES
 from springlife.report.terminal import console_for_output, print_findings, print_table, quantity_of_life
 from springlife.strength.criteria import CRITERIA
 from springlife.units import significant
@@ -31,6 +32,9 @@ def print_comparison(result: Comparison, caution: str) -> None:
         labels = ("verdict", "life", "stress margin", "mass", "relative wire cost", "best on life against")
         rows = [(option.name, *(_cells(option)[label] for label in labels)) for option in ranked]
         print_table(console, "Options, longest life first", ("option", *labels), rows)
+    if any(option.b10 for option in result.options):
+        text = f"B10: 90 % of {B10_SAMPLES} springs drawn by the case's scatter reach this life."
+        console.print(Text(text, style="dim"))
     print_findings(console, result.findings)
     console.print()
     console.print(Text(caution, style="italic"))
@@ -55,7 +59,9 @@ def _cells(option: Option) -> dict[str, str]:
         f"life by {name}": quantity_of_life(a, option.lives[name]) if name in option.lives else "withheld"
         for name in CRITERIA
     }
+    b10 = option.b10
     return cells | {
+        "B10 life": quantity_of_life(a, b10.value) if b10 else "-",
         "rate": shown(j.spring.rate if j else None, "rate"),
         "preload": shown(option.preload, "force"),
         "peak stress": shown(option.peak_stress, "stress"),
