@@ -119,7 +119,7 @@ def test_without_time_or_rate_the_span_is_unknown(tmp_path: Path) -> None:
     assert recording.sample_rate is None and recording.span is None and recording.block_times is None
 
 
-@given(st.integers(1, 12), st.integers(1, 60), st.sampled_from([30, 1 << 22]))
+@given(st.integers(1, 12), st.integers(1, 60), st.sampled_from([30, 1 << 20]))
 @settings(max_examples=60, deadline=None)
 def test_blocks_of_any_size_give_the_same_samples(size: int, rows: int, block: int) -> None:
     import tempfile

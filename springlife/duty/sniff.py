@@ -43,6 +43,7 @@ class Layout:
     columns: tuple[Column, ...]
     has_header: bool
     start: int
+    first: tuple[str, ...]  # the first cell of each column that is not missing
     steps: tuple[str, ...]
 
 
@@ -64,6 +65,11 @@ class _Record:
     @property
     def is_data(self) -> bool:
         return not self.comment and self.numbers > 0
+
+
+def is_missing(cell: str) -> bool:
+    """Tell whether a cell stands for a value that is not there."""
+    return cell.strip().casefold() in MISSING
 
 
 def encoding_of(path: Path, head: bytes) -> str:
@@ -122,11 +128,15 @@ def layout_of(path: Path, text: str, encoding: str, wanted: Iterable[str | int |
     titles = [title or f"column {n}" for n, title in enumerate(named[:count], start=1)]
     stated = (units or [])[:count] + [""] * (count - len(units or []))
     columns = tuple(Column.of(title, unit) for title, unit in zip(titles, stated, strict=True))
+    first = tuple(
+        next((record.cells[i] for record in rows if len(record.cells) == width and not is_missing(record.cells[i])), "")
+        for i in range(width)
+    )
     steps = [_ENCODINGS[encoding]]
     steps.append(f"{count} columns between {_NAMES[delimiter]}" if count > 1 else "one column")
     steps.append(f"decimal {'comma' if decimal == ',' else 'point'}")
     steps.append(f"numbers from row {start}" + ("" if names else ", no header") + (", units row" if units else ""))
-    return Layout(encoding, delimiter, decimal, width, columns, names is not None, start, (", ".join(steps),))
+    return Layout(encoding, delimiter, decimal, width, columns, names is not None, start, first, (", ".join(steps),))
 
 
 def _split(path: Path, text: str) -> tuple[str, int, list[_Record]]:

@@ -1,8 +1,8 @@
 """Text tables (CSV as loggers write it), read in blocks of whole rows.
 
-Small files and awkward blocks go through the csv module, cell by cell, under one set of rules. Large files
-go through Arrow, which accepts a subset of those rules with the same values (both round decimal fractions
-correctly); a block that Arrow refuses is read again with care, and either is fine or yields the sentence.
+There is one set of rules, those of the reader that goes cell by cell. Larger files go through faster ways,
+which take a subset of those rules with the same values; a block that they refuse is read again with care, and
+either is fine or yields the sentence that says what is wrong, and where.
 """
 
 from __future__ import annotations
@@ -12,25 +12,26 @@ import csv
 import gzip
 import io
 import zlib
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
-from typing import IO, TYPE_CHECKING, cast
+from typing import IO, TYPE_CHECKING, Literal, cast
 
 import numpy as np
 
+from springlife.duty.formats.blocks import Columns, Parsed, ahead, parse, ways_for
 from springlife.duty.formats.dates import AMBIGUOUS, STAMP, stamps_of
 from springlife.duty.formats.table import Chunk, Floats, Stamps, Table, choose_pair
-from springlife.duty.sniff import HEAD, MISSING, NUMBER, Layout, cells_of, encoding_of, layout_of
+from springlife.duty.sniff import HEAD, NUMBER, Layout, cells_of, encoding_of, is_missing, layout_of
 from springlife.errors import InputError
 
 if TYPE_CHECKING:
     from springlife.duty.record import RecordSpec
 
-BLOCK = 1 << 22  # bytes read at a time
+BLOCK = 1 << 20  # bytes read at a time: what fits a core's cache is read fastest
+LONGEST = 1 << 22  # bytes of one row
 GZIP, ZSTANDARD = b"\x1f\x8b", b"\x28\xb5\x2f\xfd"
 OPEN_QUOTE = "a quoted cell is not closed in its row"
-SMALL = 1 << 20  # blocks up to this size are not worth loading Arrow for
 
 
 def read_text(path: Path, spec: RecordSpec) -> Table:
@@ -49,9 +50,25 @@ def read_text(path: Path, spec: RecordSpec) -> Table:
                 f"{len(layout.columns)}"
             )
     channel, time = choose_pair(path, layout.columns, spec.channel, spec.time)
-    reader = _Reader(path, layout, channel, time)
-    columns = layout.columns
-    return Table(columns, columns[channel], None if time is None else columns[time], reader.chunks, steps=layout.steps)
+    clock = "numbers" if time is None else _clock(path, layout, time)
+    columns = Columns(layout.delimiter, layout.decimal, layout.width, channel, time, clock)
+    named = layout.columns
+    reader = _Reader(path, layout, columns)
+    return Table(named, named[channel], None if time is None else named[time], reader.chunks, steps=layout.steps)
+
+
+def _clock(path: Path, layout: Layout, time: int) -> Literal["numbers", "stamps", "zoned stamps"]:
+    """Tell from the first time whether the column holds numbers or date-times."""
+    first = layout.first[time]
+    match = STAMP.fullmatch(first)
+    if match:
+        return "zoned stamps" if match[3] else "stamps"
+    if not NUMBER.fullmatch(first) and AMBIGUOUS.fullmatch(first):
+        raise InputError(
+            f"{path}, column {layout.columns[time].title!r}, row {layout.start}: {first!r} can be read in several "
+            "ways; write times as 2025-03-31T14:05:06.250 (ISO 8601) or in seconds, or give sample_rate"
+        )
+    return "numbers"
 
 
 def _head(path: Path, raw: bytes, encoding: str) -> str:
@@ -72,77 +89,63 @@ def _head(path: Path, raw: bytes, encoding: str) -> str:
 class _Reader:
     """One pass after another over a text table whose layout is known."""
 
-    def __init__(self, path: Path, layout: Layout, channel: int, time: int | None) -> None:
-        self.path, self.layout, self.channel, self.time = path, layout, channel, time
-        self.stamped: bool | None = None  # whether times are dates; None until a row has been seen
+    def __init__(self, path: Path, layout: Layout, columns: Columns) -> None:
+        self.path, self.layout, self.columns = path, layout, columns
 
     def chunks(self) -> Iterator[Chunk]:
         """Yield the samples block by block."""
-        row = 1
-        for block in self._blocks():
-            skip = self.layout.start - row
-            if skip > 0:  # what stands above the first row of numbers
-                lines = block.split(b"\n", skip)
-                row, block = row + len(lines) - 1, lines[-1]
-            if not block.strip():
+        row = self.layout.start
+        for block, parsed in self._parsed():
+            if parsed is not None:
+                yield Chunk(*parsed, lambda i, row=row: f"row {row + i}")  # type: ignore[misc]
+                row += parsed[0].size
                 continue
-            if len(block) > BLOCK and b"\n" not in block:
-                raise InputError(f"{self.path}, row {row}: is longer than {BLOCK} bytes; save one row a sample")
-            chunk = self._fast(row, block) if len(block) > SMALL else None
-            if chunk is not None:
-                row += chunk.values.size
-            else:
-                chunk = self._careful(row, block)
-                row += block.count(b"\n")
-            yield chunk
+            yield self._careful(row, block)
+            row += block.count(b"\n")
+
+    def _parsed(self) -> Iterator[tuple[bytes, Parsed | None]]:
+        """Yield each block of rows with what a fast way made of it, None where care is needed."""
+        ways = list(ways_for(self.path.stat().st_size, self.columns))
+        if not ways:
+            return ((block, None) for block in self._rows())
+        return ahead(lambda block: parse(block, self.columns, ways), self._rows())
+
+    def _rows(self) -> Iterator[bytes]:
+        """Yield the blocks without what stands above the first row of numbers."""
+        above = self.layout.start - 1
+        for block in self._blocks():
+            if above:
+                lines = block.split(b"\n", above)
+                above, block = above - len(lines) + 1, lines[-1]
+            if block.strip():
+                yield block
 
     def _blocks(self) -> Iterator[bytes]:
         """Yield whole rows in UTF-8 or Latin-1, without the blank lines at the end of the file."""
-        carry = b""
+        carry, done = b"", 0
         with open_bytes(self.path) as file:
             for data in _as_bytes(self.path, file, self.layout.encoding):
                 data = carry + data
                 # Cut after the last row that is not blank: blank lines are gaps only when rows follow them.
                 cut = len(data[: data.rfind(b"\n") + 1].rstrip(b"\r\n\t "))
                 cut = data.find(b"\n", cut) + 1 if cut else 0
-                if not cut and len(data) > BLOCK and data.strip():
-                    cut = len(data)
+                if not cut and len(data) > LONGEST and data.strip():
+                    row = self._row_at(done)
+                    raise InputError(f"{self.path}, row {row}: is longer than {LONGEST} bytes; save one row a sample")
                 if cut:
                     yield data[:cut]
-                carry = data[cut:]
+                carry, done = data[cut:], done + cut
             if carry.strip():
                 yield carry
 
-    def _fast(self, row: int, block: bytes) -> Chunk | None:
-        """Read a block through Arrow; None when it holds anything that needs care."""
-        import pyarrow as pa
-        from pyarrow import csv as arrow
-
-        layout = self.layout
-        if b"\n\n" in block or b"\n\r\n" in block or block.startswith((b"\n", b"\r\n")):
-            return None
-        names = [str(n) for n in range(layout.width)]
-        kinds = {names[self.channel]: pa.float64()}
-        if self.time is not None:
-            kinds[names[self.time]] = pa.string() if self.stamped else pa.float64()
-        try:
-            table = arrow.read_csv(
-                pa.BufferReader(block),
-                read_options=arrow.ReadOptions(column_names=names, block_size=1 << 20),
-                parse_options=arrow.ParseOptions(delimiter=layout.delimiter),
-                convert_options=arrow.ConvertOptions(
-                    include_columns=list(kinds), column_types=kinds, null_values=["", "nan", "NaN"],
-                    decimal_point=layout.decimal, check_utf8=False,
-                ),
-            )  # fmt: skip
-        except pa.ArrowInvalid:
-            return None
-        values = table[names[self.channel]].to_numpy()
-        times = None
-        if self.time is not None:
-            column = table[names[self.time]]
-            times = self._stamps(column.to_pylist(), lambda i: row + i) if self.stamped else column.to_numpy()
-        return Chunk(values, times, lambda i: f"row {row + i}")
+    def _row_at(self, end: int) -> int:
+        """Return the number of the row that begins at a place in the decoded text."""
+        row = 1
+        with open_bytes(self.path) as file:
+            for data in _as_bytes(self.path, file, self.layout.encoding):
+                row += data[: max(0, end)].count(b"\n")
+                end -= len(data)
+        return row
 
     def _careful(self, row: int, block: bytes) -> Chunk:
         """Read a block cell by cell."""
@@ -151,7 +154,7 @@ class _Reader:
         lines: list[int] = []
         cells: list[str] = []
         clock: list[str] = []
-        width, channel, time = self.layout.width, self.channel, self.time
+        width, channel, time = self.layout.width, self.columns.channel, self.columns.time
         reader = csv.reader(io.StringIO(text, newline=""), delimiter=self.layout.delimiter, strict=True)
         try:
             for record in reader:
@@ -170,7 +173,7 @@ class _Reader:
             line = row + len(lines)
             raise InputError(f"{self.path}, row {line}: cannot be split into cells ({reason}); correct it") from error
         values = self._numbers(cells, lines, channel)
-        return Chunk(values, None if time is None else self._times(clock, lines), lambda i: f"row {lines[i]}")
+        return Chunk(values, None if time is None else self._times(clock, lines, time), lambda i: f"row {lines[i]}")
 
     def _ragged(self, line: int, seen: int) -> str:
         columns = self.layout.width
@@ -204,30 +207,11 @@ class _Reader:
         title = self.layout.columns[column].title
         raise InputError(f"{self.path}, column {title!r}, row {line}: {cell[:60]!r} is not a number; {remedy}")
 
-    def _times(self, cells: list[str], lines: list[int]) -> Floats | Stamps:
-        assert self.time is not None
-        if self.stamped is None:
-            first = next((cell.strip() for cell in cells if not is_missing(cell)), "")
-            self.stamped = STAMP.fullmatch(first) is not None
-            if not self.stamped and not NUMBER.fullmatch(first) and AMBIGUOUS.fullmatch(first):
-                title = self.layout.columns[self.time].title
-                raise InputError(
-                    f"{self.path}, column {title!r}, row {lines[0]}: {first!r} can be read in several ways; "
-                    "write times as 2025-03-31T14:05:06.250 (ISO 8601) or in seconds, or give sample_rate"
-                )
-        if self.stamped:
-            return self._stamps(cells, lines.__getitem__)
-        return self._numbers(cells, lines, self.time)
-
-    def _stamps(self, cells: Sequence[str | None], line: Callable[[int], int]) -> Stamps:
-        assert self.time is not None
-        place = f"{self.path}, column {self.layout.columns[self.time].title!r}, row "
-        return stamps_of([cell or "" for cell in cells], is_missing, lambda i: f"{place}{line(i)}")
-
-
-def is_missing(cell: str) -> bool:
-    """Tell whether a cell stands for a value that is not there."""
-    return cell.strip().casefold() in MISSING
+    def _times(self, cells: list[str], lines: list[int], column: int) -> Floats | Stamps:
+        if self.columns.clock == "numbers":
+            return self._numbers(cells, lines, column)
+        place = f"{self.path}, column {self.layout.columns[column].title!r}, row "
+        return stamps_of(cells, is_missing, lambda i: f"{place}{lines[i]}")
 
 
 @contextmanager
