@@ -99,6 +99,7 @@ def _compare_command(commands: Any) -> None:
         default="stroke",
         help="what stays as of the drawn spring (default: stroke)",
     )
+    _figure_options(parser, "all options in one Haigh diagram")
 
 
 def _fit_command(commands: Any) -> None:
@@ -114,9 +115,8 @@ def _fit_command(commands: Any) -> None:
     parser.add_argument("--reliability", type=float, default=0.9, help="of the design curve (default: 0.9)")
     parser.add_argument("--confidence", type=float, default=0.9, help="of the design curve (default: 0.9)")
     parser.add_argument("-o", "--output", metavar="CURVE.toml", help="write the curve file here")
-    parser.add_argument("--figure", metavar="FILE", help="draw tests and curves to an SVG, PNG or PDF file")
     parser.add_argument("--title", default="own fatigue tests", help="title of the curve file")
-    parser.add_argument("--force", action="store_true", help="write over files that are already there")
+    _figure_options(parser, "tests and curves")
     _finish(parser, _fit)
 
 
@@ -135,9 +135,8 @@ def _fit(arguments: argparse.Namespace) -> int:
     )
     if arguments.figure:
         from springlife.report.figures_fit import own_tests
-        from springlife.report.output import save_figure
 
-        save_figure(own_tests(result), arguments.figure, force=arguments.force)
+        _save(own_tests(result), arguments)
     if arguments.output:
         result.write(arguments.output, title=arguments.title, force=arguments.force)
     if arguments.json:
@@ -166,6 +165,17 @@ def _count_command(commands: Any) -> None:
     parser.add_argument("--recount", action="store_true", help="recount with the rainflow package and compare")
     parser.add_argument("--top", type=int, default=12, metavar="N", help="rows to print (default 12; 0 for all)")
     _finish(parser, _count)
+
+
+def _figure_options(parser: argparse.ArgumentParser, what: str) -> None:
+    parser.add_argument("--figure", metavar="FILE", help=f"draw {what} to an SVG, PNG or PDF file")
+    parser.add_argument("--force", action="store_true", help="write over files that are already there")
+
+
+def _save(figure: Any, arguments: argparse.Namespace) -> None:
+    from springlife.report.output import save_figure
+
+    save_figure(figure, arguments.figure, force=arguments.force)
 
 
 def _print_json(data: Any) -> None:
@@ -204,6 +214,10 @@ def _compare(arguments: argparse.Namespace) -> int:
     from springlife.life.compare import compare
 
     result = compare(arguments.case, arguments.hold)
+    if arguments.figure:
+        from springlife.report.figures_options import options_haigh
+
+        _save(options_haigh(result), arguments)
     if arguments.json:
         _print_json(result.to_dict())
     else:
@@ -219,12 +233,19 @@ def _scatter_command(commands: Any) -> None:
         "--samples", type=int, metavar="N", help="springs to draw, a power of two (default: the case's)"
     )
     parser.add_argument("--seed", type=int, metavar="N", help="seed of the draw (default: the case's)")
+    _figure_options(parser, "what matters most")
 
 
 def _scatter(arguments: argparse.Namespace) -> int:
     from springlife.life.scatter import scatter
 
     result = scatter(arguments.case, samples=arguments.samples, seed=arguments.seed)
+    if arguments.figure:
+        from springlife.report.figures_scatter import tornado
+
+        if result.no_sensitivities:
+            raise InputError(f"--figure: there are no indices to draw: {result.no_sensitivities}")
+        _save(tornado(result), arguments)
     if arguments.json:
         _print_json(result.to_dict())
     else:

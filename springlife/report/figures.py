@@ -47,7 +47,7 @@ STYLE = {
 
 
 @contextmanager
-def _axes(size: tuple[float, float] = SIZE) -> Iterator[tuple[Figure, Axes]]:
+def axes_in_style(size: tuple[float, float] = SIZE) -> Iterator[tuple[Figure, Axes]]:
     """Make a figure in the house style without pyplot."""
     import matplotlib
     from matplotlib.backends.backend_agg import FigureCanvasAgg
@@ -79,7 +79,7 @@ def haigh(result: Assessment) -> Figure:
     def to(values: Any) -> Floats:
         return np.asarray(values, dtype=np.float64) * scale
 
-    with _axes() as (figure, axes):
+    with axes_in_style() as (figure, axes):
         tau_a, tau_m = j.model.stress.cycles(j.cycles.low, j.cycles.high)
         total = j.cycle_damage.sum()
         share = j.cycle_damage / total if 0 < total < np.inf else np.zeros_like(j.cycle_damage)

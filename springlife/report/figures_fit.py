@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from springlife.report.figures import ACCENT, INK, _axes
+from springlife.report.figures import ACCENT, INK, axes_in_style
 from springlife.strength.criteria import criterion
 from springlife.units import convert
 
@@ -26,7 +26,7 @@ def own_tests(result: OwnFit, unit: str = "MPa") -> Figure:
     tests, fit = result.tests, result.fit
     amplitudes = criterion(fit.criterion).equivalent(tests.amplitude, tests.mean, result.Ssu, result.Ssy) * scale
     groups = np.array(tests.group or [fit.lines[0].group] * len(tests.cycles))
-    with _axes() as (figure, axes):
+    with axes_in_style() as (figure, axes):
         for number, line in enumerate(fit.lines):
             colour, marker = COLOURS[number % 2], MARKERS[number % len(MARKERS)]
             mine = groups == line.group

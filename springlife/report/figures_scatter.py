@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from springlife.report.figures import ACCENT, GREY, INK, PALE, SIZE, _axes
+from springlife.report.figures import ACCENT, GREY, INK, PALE, SIZE, axes_in_style
 from springlife.units import significant
 
 if TYPE_CHECKING:
@@ -30,7 +30,7 @@ def tornado(result: ScatterResult) -> Figure:
     totals = np.array([one.total.value for one in ranked]) * 100
     alone = np.array([one.first.value for one in ranked]) * 100
     reach = np.array([one.total.high - one.total.value for one in ranked]) * 100
-    with _axes((SIZE[0], 1.2 + 0.32 * len(ranked))) as (figure, axes):
+    with axes_in_style((SIZE[0], 1.2 + 0.32 * len(ranked))) as (figure, axes):
         axes.barh(rows, totals, height=0.62, color=PALE, edgecolor=GREY, linewidth=0.8, label="with interactions")
         axes.errorbar(totals, rows, xerr=reach, fmt="none", ecolor=INK, elinewidth=1.0, capsize=2.5)
         axes.plot(np.maximum(alone, 0), rows, "o", color=ACCENT, markersize=4.5, label="alone", clip_on=False, zorder=4)
