@@ -9,6 +9,7 @@ from __future__ import annotations
 import difflib
 import hashlib
 import tomllib
+import unicodedata
 from collections.abc import Iterator
 from dataclasses import dataclass
 from itertools import product
@@ -16,6 +17,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Annotated, Any, Literal, get_args, get_origin
 
 from pydantic import (
+    AfterValidator,
     BaseModel,
     BeforeValidator,
     ConfigDict,
@@ -42,6 +44,16 @@ def _quantity(kind: str) -> BeforeValidator:
     return BeforeValidator(lambda text: units.parse(text, kind))
 
 
+def _printable(text: str) -> str:
+    """Refuse control characters: they would act on a terminal and cannot stand in a report."""
+    for character in text:
+        if unicodedata.category(character) == "Cc":
+            raise ValueError(f"holds the control character U+{ord(character):04X}; write plain text on one line")
+    return text
+
+
+Text = Annotated[str, AfterValidator(_printable)]
+Name = Annotated[str, Field(min_length=1), AfterValidator(_printable)]
 Length = Annotated[float, _quantity("length")]
 Positive = Annotated[float, Field(gt=0)]
 Share = Annotated[float, Field(gt=0, lt=1)]
@@ -109,7 +121,7 @@ class BlockInput(_Table):
 class EventInput(_Table):
     """One [[duty.event]]: a record or a list of blocks, and how often it happens in a pass."""
 
-    name: Annotated[str, Field(min_length=1)]
+    name: Name
     repeats: Annotated[int, Field(ge=1)] = 1
     blocks: Annotated[list[BlockInput], Field(min_length=1)] | None = None
     record: str | None = None
@@ -192,8 +204,8 @@ class WaiveInput(_Table):
     """One [[waive]]: a finding accepted on purpose, by name and with a reason."""
 
     finding: str
-    by: Annotated[str, Field(min_length=1)]
-    reason: Annotated[str, Field(min_length=1)]
+    by: Name
+    reason: Name
 
     @model_validator(mode="after")
     def _known(self) -> WaiveInput:
@@ -207,7 +219,7 @@ class WaiveInput(_Table):
 class OptionInput(_Table):
     """One [[option]]: overrides of [spring] or [judge], kept as written until merged."""
 
-    name: Annotated[str, Field(min_length=1)]
+    name: Name
     spring: dict[str, Any] = {}
     judge: dict[str, Any] = {}
 
@@ -216,11 +228,11 @@ class CaseInput(_Table):
     """The whole file."""
 
     format: int
-    title: Annotated[str, Field(min_length=1)]
-    part: str = ""
-    revision: str = ""
-    author: str = ""
-    date: str = ""
+    title: Name
+    part: Text = ""
+    revision: Text = ""
+    author: Text = ""
+    date: Text = ""
     spring: SpringInput
     duty: DutyInput
     judge: JudgeInput = JudgeInput()

@@ -58,7 +58,7 @@ def options_haigh(result: Comparison) -> Figure:
         axes.set_xlabel(f"mean shear stress, {say.units['stress']}")
         axes.set_ylabel(f"alternating shear stress, {say.units['stress']}")
         title = f"line: {result.case.judge.criterion} at the knee; marker: governing cycle; held: {result.hold}"
-        axes.legend(loc="upper right", frameon=False, title=title, title_fontsize=8, alignment="left")
+        axes.legend(loc="upper right", frameon=False, title=title, title_fontsize=8, alignment="left", labelspacing=1.3)
     return figure
 
 
