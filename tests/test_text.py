@@ -153,6 +153,17 @@ def test_a_way_that_refuses_what_the_next_one_takes_is_not_asked_again() -> None
     assert parse(b"0,0.12345678901234567\n", columns, ways) is not None and ways == ["arrow"]
 
 
+def test_a_fraction_that_comes_late_still_tells_the_decimal_sign(tmp_path: Path) -> None:
+    rows = "".join(f"{n};0\n" for n in range(1000))
+    values = read(tmp_path, f"t;travel\n{rows}1000;0,5\n1001;1,5\n")
+    np.testing.assert_allclose(values[-2:], [0.5, 1.5])
+
+
+def test_a_long_preamble_is_passed_over(tmp_path: Path) -> None:
+    preamble = "".join(f"Channel {n} calibrated by hand\n" for n in range(900))
+    np.testing.assert_allclose(read(tmp_path, preamble + PLAIN), X, rtol=1e-15)
+
+
 def test_zstandard(tmp_path: Path) -> None:
     import pyarrow as pa
 

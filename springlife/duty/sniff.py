@@ -12,13 +12,17 @@ import re
 from collections import Counter
 from collections.abc import Iterable
 from dataclasses import dataclass
+from functools import cached_property
+from itertools import islice
 from pathlib import Path
+from typing import NoReturn
 
 from springlife.duty.formats.dates import STAMP
 from springlife.duty.formats.table import Column
 from springlife.errors import InputError
 
 HEAD = 1 << 16  # bytes looked at; a preamble longer than this is refused
+FEW = 250  # lines that usually tell enough
 MISSING = frozenset({"", "nan", "-nan", "na", "n/a", "#n/a", "null"})
 NUMBER = re.compile(r"[+-]?(?:\d+[.,]?\d*|[.,]\d+)(?:[eE][+-]?\d+)?|[+-]?inf(?:inity)?", re.IGNORECASE | re.ASCII)
 _COMMENT = re.compile(r"\s*(#|//|%)+")
@@ -53,7 +57,7 @@ class _Record:
     cells: list[str]
     comment: bool
 
-    @property
+    @cached_property
     def numbers(self) -> int:
         """Number of cells that hold a number or a date and time."""
         return sum((NUMBER.fullmatch(cell) or STAMP.fullmatch(cell)) is not None for cell in self.cells)
@@ -116,9 +120,13 @@ def layout_of(path: Path, text: str, encoding: str, wanted: Iterable[str | int |
         No table of numbers, columns separated by spaces, decimal commas between commas, header and rows of
         different width.
     """
-    delimiter, width, records = _split(path, text)
+    few = "".join(islice(io.StringIO(text, newline=""), FEW))
+    delimiter, width, records = _split(path, few) or _split(path, text) or _refuse(path, text)
     rows = [record for record in records if record.is_data and len(record.cells) == width]
     decimal = _decimal(path, rows)
+    if not decimal and any(sign in text for sign in ".,".replace(delimiter, "")):
+        decimal = _decimal(path, [record for record in _records(path, text, delimiter) if record.is_data])
+    decimal = decimal or "."
     names, units, start = _header(path, records, width, delimiter, {w for w in wanted if isinstance(w, str)})
     if names is None:
         _refuse_fractions(path, rows, delimiter)
@@ -129,8 +137,7 @@ def layout_of(path: Path, text: str, encoding: str, wanted: Iterable[str | int |
     stated = (units or [])[:count] + [""] * (count - len(units or []))
     columns = tuple(Column.of(title, unit) for title, unit in zip(titles, stated, strict=True))
     first = tuple(
-        next((record.cells[i] for record in rows if len(record.cells) == width and not is_missing(record.cells[i])), "")
-        for i in range(width)
+        next((record.cells[i] for record in rows if not is_missing(record.cells[i])), "") for i in range(width)
     )
     steps = [_ENCODINGS[encoding]]
     steps.append(f"{count} columns between {_NAMES[delimiter]}" if count > 1 else "one column")
@@ -139,7 +146,7 @@ def layout_of(path: Path, text: str, encoding: str, wanted: Iterable[str | int |
     return Layout(encoding, delimiter, decimal, width, columns, names is not None, start, first, (", ".join(steps),))
 
 
-def _split(path: Path, text: str) -> tuple[str, int, list[_Record]]:
+def _split(path: Path, text: str) -> tuple[str, int, list[_Record]] | None:
     """Choose the delimiter that gives most rows of one width; semicolon before tab before comma in a tie."""
     best: tuple[int, str, int, list[_Record]] = (0, ",", 0, [])
     for delimiter in ";\t,":
@@ -151,9 +158,7 @@ def _split(path: Path, text: str) -> tuple[str, int, list[_Record]]:
     if best[0]:
         return best[1:]
     records = _records(path, text, ",")
-    if any(record.is_data for record in records):
-        return ",", 1, records
-    raise InputError(f"{path}: {_no_table(text)}")
+    return (",", 1, records) if any(record.is_data for record in records) else None
 
 
 def _records(path: Path, text: str, delimiter: str) -> list[_Record]:
@@ -175,18 +180,22 @@ def _records(path: Path, text: str, delimiter: str) -> list[_Record]:
     return records
 
 
-def _no_table(text: str) -> str:
+def _refuse(path: Path, text: str) -> NoReturn:
+    """Say why there is no table."""
     lines = [line.strip() for line in text.splitlines() if line.strip()]
     spaced = next((line for line in lines if len(line.split()) > 1 and all(map(NUMBER.fullmatch, line.split()))), None)
+    seen = repr((spaced or lines[0])[:60])
     if spaced:
-        return f"columns are separated by spaces ({spaced[:60]!r}); save with commas, semicolons or tabs instead"
+        raise InputError(
+            f"{path}: columns are separated by spaces ({seen}); save with commas, semicolons or tabs instead"
+        )
     if len(lines) <= 2:
-        return f"has a header but no rows of numbers (it begins {lines[0][:60]!r}); export the record again"
-    return f"no rows of numbers found (it begins {lines[0][:60]!r}); save it as a table with one row a sample"
+        raise InputError(f"{path}: has a header but no rows of numbers (it begins {seen}); export the record again")
+    raise InputError(f"{path}: no rows of numbers found (it begins {seen}); save it as a table with one row a sample")
 
 
 def _decimal(path: Path, rows: list[_Record]) -> str:
-    """Tell decimal comma from decimal point; both in one file is refused."""
+    """Tell decimal comma from decimal point, "" when there is neither; both in one file is refused."""
     seen: dict[str, tuple[int, str]] = {}
     for record in rows:
         for cell in record.cells:
@@ -200,7 +209,7 @@ def _decimal(path: Path, rows: list[_Record]) -> str:
             f"{path}: has decimal points ({point!r} in row {point_row}) and decimal commas ({comma!r} in row "
             f"{comma_row}); save it with one decimal sign"
         )
-    return "," if "," in seen else "."
+    return next(iter(seen), "")
 
 
 def _header(
