@@ -13,9 +13,10 @@ from springlife.duty.counting import count
 from springlife.life.tally import recount
 from springlife.published import Answer, Check
 from springlife.spring import checks as spring_checks
+from springlife.spring import surge_checks
 from springlife.strength import checks as strength_checks
 
-METHODS = spring_checks.METHODS | duty_checks.METHODS | strength_checks.METHODS
+METHODS = spring_checks.METHODS | surge_checks.METHODS | duty_checks.METHODS | strength_checks.METHODS
 HISTORIES, SEED = 200, 1049
 
 
