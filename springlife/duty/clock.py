@@ -162,7 +162,7 @@ class Clock:
 
 def _sentence(kind: Kind, before: float, after: float, usual: float) -> str:
     """Say what breaks, with both times."""
-    a, b = f"{significant(before, 9)} s", f"{significant(after, 9)} s"
+    a, b = f"{before:.15g} s", f"{after:.15g} s"  # seconds since 1970 have ten digits before the point
     if kind == "back":
         return f"the time goes back from {a} to {b}"
     if kind == "repeat":

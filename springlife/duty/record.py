@@ -117,7 +117,8 @@ class Recording:
 
     def _start_pass(self) -> None:
         self._clock = Clock()
-        self._samples = 0
+        self._samples = 0  # rows
+        self._known = 0  # rows with a value
         self._missing = 0  # runs of missing values
         self._after_missing = False
         self._shift = 0.0  # s, from the times of this piece to recorded time
@@ -246,6 +247,7 @@ class Recording:
         """Refuse infinities; count or refuse missing values."""
         with np.errstate(over="ignore", invalid="ignore"):
             suspect = not np.isfinite(raw.sum())
+        self._known += raw.size
         if not suspect:  # NaN and infinities would show in the sum
             self._after_missing = False
             return
@@ -261,6 +263,7 @@ class Recording:
         if self.spec.gaps == "error":
             raise GapError(f"{where}; {REPAIR}")
         self._note(where.removeprefix(f"{self.path}, "))
+        self._known -= int(np.count_nonzero(missing))
         starts = missing & ~np.concatenate([[self._after_missing], missing[:-1]])
         self._missing += int(np.count_nonzero(starts))
         self._after_missing = bool(missing[-1])
@@ -305,8 +308,8 @@ class Recording:
 
     def _check_end(self) -> None:
         """Judge what only the whole record shows."""
-        if self._samples < 2:
-            seen = "no rows" if self._samples == 0 else "only one row"
+        if self._known < 2:
+            seen = "no value" if self._known == 0 else "only one value"
             raise InputError(f"{self.path}, column {self.channel!r}: has {seen}; a record needs at least two samples")
         if self._first_repeat and self.spec.gaps == "error":
             raise GapError(

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import zipfile
 from collections.abc import Iterator, Mapping
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -35,6 +34,8 @@ def read_npy(path: Path, spec: RecordSpec) -> Table:
 
 def read_npz(path: Path, spec: RecordSpec) -> Table:
     """Open a NumPy archive: each array of it is a column."""
+    import zipfile
+
     with zipfile.ZipFile(path) as archive:
         names = [name.removesuffix(".npy") for name in archive.namelist() if name.endswith(".npy")]
     if not names:

@@ -12,13 +12,15 @@ import sys
 import threading
 from collections import deque
 from collections.abc import Callable, Iterator
-from concurrent.futures import Future, ThreadPoolExecutor
 from dataclasses import dataclass
-from typing import Any, Literal
+from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 
 from springlife.duty.formats.table import Floats, Stamps
+
+if TYPE_CHECKING:
+    from concurrent.futures import Future
 
 Parsed = tuple[Floats, Floats | Stamps | None]
 Way = Literal["kernel", "arrow"]
@@ -78,6 +80,8 @@ def ahead(work: Callable[[bytes], Any], blocks: Iterator[bytes]) -> Iterator[tup
         for block in blocks:
             yield block, work(block)
         return
+    from concurrent.futures import ThreadPoolExecutor
+
     with ThreadPoolExecutor(workers) as pool:
         waiting: deque[tuple[bytes, Future[Any]]] = deque()
         for block in blocks:

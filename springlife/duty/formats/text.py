@@ -183,19 +183,16 @@ class _Reader:
         """Turn cells into floats, NaN where one is missing."""
         joined = "".join(cells)
         decimal = self.layout.decimal
-        if decimal == "," and "." not in joined:
-            cells, joined = [cell.replace(",", ".") for cell in cells], joined.replace(",", ".")
-            decimal = "."
-        if decimal == "." and "_" not in joined and joined.isascii():
+        if "_" not in joined and joined.isascii() and (decimal == "." or "." not in joined):
             try:
-                return np.array([float(cell) for cell in cells])
+                return np.array([float(cell.replace(decimal, ".")) for cell in cells])
             except ValueError:
                 pass  # a missing or a wrong cell: look at each
-        return np.array([self._number(cell, decimal, line, column) for cell, line in zip(cells, lines, strict=True)])
+        return np.array([self._number(cell, line, column) for cell, line in zip(cells, lines, strict=True)])
 
-    def _number(self, cell: str, decimal: str, line: int, column: int) -> float:
+    def _number(self, cell: str, line: int, column: int) -> float:
         cell = cell.strip()
-        other = "," if decimal == "." else "."
+        other = "," if self.layout.decimal == "." else "."
         if NUMBER.fullmatch(cell) and other not in cell:
             return float(cell.replace(",", "."))
         if is_missing(cell):
