@@ -325,8 +325,11 @@ def test_written_numbers_come_back_bit_for_bit(
     assert read.tobytes() == expected.tobytes()
 
 
+QUOTED = st.lists(st.text('01"; ', max_size=8), min_size=1, max_size=4)
+
+
 @given(
-    cells=st.lists(st.text("0123456789.,+-eEnaif_x \"'", max_size=8), min_size=1, max_size=6),
+    cells=st.lists(st.text("0123456789.,+-eEnaif_x \"'", max_size=8), min_size=1, max_size=6) | QUOTED,
 )
 @settings(max_examples=200, deadline=None)
 def test_all_ways_of_reading_agree_on_any_cells(cells: list[str], tmp_path_factory: pytest.TempPathFactory) -> None:

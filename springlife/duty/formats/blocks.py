@@ -8,6 +8,7 @@ third of a second to load and is several times faster then.
 from __future__ import annotations
 
 import os
+import re
 import sys
 import threading
 from collections import deque
@@ -119,6 +120,8 @@ def _arrow(block: bytes, columns: Columns) -> Parsed | None:
 
     if b"\n\n" in block or b"\n\r\n" in block or block.startswith((b"\n", b"\r\n")):
         return None  # Arrow passes over blank lines
+    if b'"' in block and re.search(rb'[^%b\n]"[^%b\r\n]' % (2 * (re.escape(columns.delimiter.encode()),)), block):
+        return None  # and takes a quote amid a cell
     names = [str(n) for n in range(columns.width)]
     clocks = {"numbers": pa.float64(), "stamps": pa.timestamp("ns"), "zoned stamps": pa.timestamp("ns", "UTC")}
     kinds = {names[columns.channel]: pa.float64()}

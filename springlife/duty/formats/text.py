@@ -117,7 +117,7 @@ class _Reader:
             if above:
                 lines = block.split(b"\n", above)
                 above, block = above - len(lines) + 1, lines[-1]
-            if block.strip():
+            if block and not block.isspace():
                 yield block
 
     def _blocks(self) -> Iterator[bytes]:
@@ -126,16 +126,14 @@ class _Reader:
         with open_bytes(self.path) as file:
             for data in _as_bytes(self.path, file, self.layout.encoding):
                 data = carry + data
-                # Cut after the last row that is not blank: blank lines are gaps only when rows follow them.
-                cut = len(data[: data.rfind(b"\n") + 1].rstrip(b"\r\n\t "))
-                cut = data.find(b"\n", cut) + 1 if cut else 0
-                if not cut and len(data) > LONGEST and data.strip():
+                cut = _end_of_rows(data)
+                if not cut and len(data) > LONGEST and not data.isspace():
                     row = self._row_at(done)
                     raise InputError(f"{self.path}, row {row}: is longer than {LONGEST} bytes; save one row a sample")
                 if cut:
                     yield data[:cut]
                 carry, done = data[cut:], done + cut
-            if carry.strip():
+            if carry and not carry.isspace():
                 yield carry
 
     def _row_at(self, end: int) -> int:
@@ -209,6 +207,16 @@ class _Reader:
             return self._numbers(cells, lines, column)
         place = f"{self.path}, column {self.layout.columns[column].title!r}, row "
         return stamps_of(cells, is_missing, lambda i: f"{place}{lines[i]}")
+
+
+def _end_of_rows(data: bytes) -> int:
+    """Return the place after the last row that is not blank: blank lines are gaps only when rows follow them."""
+    end = data.rfind(b"\n") + 1
+    near = max(0, end - 1000)
+    if data[near:end].isspace():
+        near = 0
+    row = near + len(data[near:end].rstrip())
+    return data.find(b"\n", row) + 1 if row > near else 0
 
 
 @contextmanager
