@@ -11,9 +11,9 @@ from __future__ import annotations
 
 import math
 import tomllib
-from collections.abc import Callable, Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator, Sequence
 from dataclasses import dataclass
-from functools import cache
+from functools import cache, partial
 from importlib.resources import files
 from itertools import chain
 from typing import Any, Literal
@@ -30,9 +30,10 @@ Complex = NDArray[np.complex128]
 MovingEnds = Literal["one", "both"]
 Start = Literal["rest", "moving"]
 
-# Numerical settings: what is left of a wave when it is forgotten; the part of the rate over which the band ends;
-# deviations of the Gaussian that ends it, which leave 1e-9 at either side; the longest memory in samples.
-TRUNCATION, BAND_END, DEVIATIONS, LONGEST = 1e-9, 0.1, 6.0, 1 << 18
+# Numerical settings: what is left of a wave when it is forgotten, and of the ripple of the band's end; the part of
+# the rate over which the band ends, and deviations of the Gaussian that ends it (1e-9 beyond either side); the
+# longest memory in samples; kernel values kept rather than computed again for every block.
+TRUNCATION, RIPPLE, BAND_END, DEVIATIONS, LONGEST, KEPT = 1e-6, 1e-9, 0.1, 6.0, 1 << 19, 1 << 22
 
 
 @cache
@@ -164,7 +165,7 @@ def impact_stress(speed: float, shear_modulus: float, density: float, stress_fac
 
 def peak_factor(up_to: float, sample_rate: float) -> int:
     """Return how many times finer than ``sample_rate`` peaks of frequencies ``up_to`` (Hz) must be sampled."""
-    return max(1, math.ceil(settings()["peaks"]["samples"] * up_to / sample_rate))
+    return max(1, math.ceil(float(settings()["peaks"]["samples"]) * up_to / sample_rate))
 
 
 def local_deflection(
@@ -230,9 +231,8 @@ def local_deflection(
             f"{wave.zeta:g} is remembered for {past} samples, more than {LONGEST}; "
             f"resample the record to about {significant(10 * needed_rate(wave), 2)} Hz"
         )
-    return _overlap_save(
-        blocks, lambda f: response(f, x, wave, moving_ends), band, past, upsample=upsample, start=start
-    )
+    kernels = [partial(response, positions=one, wave=wave, moving_ends=moving_ends) for one in x[:, None]]
+    return _overlap_save(blocks, kernels, band, past, upsample, start)
 
 
 def upsampled(samples: ArrayLike, factor: int, sample_rate: float = 1.0) -> Floats:
@@ -253,9 +253,8 @@ def upsampled(samples: ArrayLike, factor: int, sample_rate: float = 1.0) -> Floa
         Content up to 0.4 of the sample rate passes; above it fades and is gone at half the rate.
     """
     band = _Band.of(sample_rate, None)
-    parts = _overlap_save(
-        [samples], lambda f: np.ones((1, f.size), complex), band, band.ripple, upsample=factor, start="moving"
-    )
+    past = 8 * band.ripple  # long against the kernel, which then does not feel the mirror image fade
+    parts = _overlap_save([samples], [lambda f: np.ones((1, f.size), complex)], band, past, factor, "moving")
     return np.concatenate([part[0] for part in parts])
 
 
@@ -282,7 +281,7 @@ class _Band:
     def ripple(self) -> int:
         """Samples after which the ripple of the band's end has gone: a Gaussian's transform is a Gaussian."""
         deviation = self.fade / (2 * DEVIATIONS)
-        return math.ceil(math.sqrt(2 * math.log(1 / TRUNCATION)) / (2 * math.pi * deviation) * self.rate)
+        return math.ceil(math.sqrt(2 * math.log(1 / RIPPLE)) / (2 * math.pi * deviation) * self.rate)
 
     def gain(self, frequency: Floats) -> Floats:
         """Return the part of each frequency (Hz) that is kept."""
@@ -293,14 +292,16 @@ class _Band:
 
 def _overlap_save(
     blocks: Iterable[ArrayLike],
-    kernels: Callable[[Floats], Complex],
+    kernels: Sequence[Callable[[Floats], Complex]],
     band: _Band,
     past: int,
-    *,
     upsample: int,
     start: Start,
 ) -> Iterator[Floats]:
-    """Filter a history, given in blocks, by kernels whose gain at 0 Hz is 1 and that reach ``past`` samples back."""
+    """Filter a history, given in blocks, by kernels whose gain at 0 Hz is 1 and that reach ``past`` samples back.
+
+    A kernel gives its transfer function at frequencies in Hz, shape (1, n).
+    """
     if upsample < 1:
         raise InputError(f"upsample is {upsample}; it must be a whole number from 1")
     lead, ahead = band.ripple, iter(blocks)
@@ -311,7 +312,12 @@ def _overlap_save(
         return
     y0 = first[0]
     frequency = np.asarray(np.fft.rfftfreq(size, 1 / band.rate), dtype=np.float64)
-    H = kernels(frequency) * band.gain(frequency)
+    gain = band.gain(frequency)
+
+    def rows() -> Iterator[Complex]:
+        return (kernel(frequency)[0] * gain for kernel in kernels)
+
+    kept = list(rows()) if len(kernels) * frequency.size <= KEPT else None
     line = np.concatenate([_before(first, past, start), first]) - y0
     early = upsample - 1  # samples between the one before the first and the first
     for block in chain(ahead, [None]):
@@ -320,20 +326,20 @@ def _overlap_save(
         else:
             line = np.concatenate([line, _checked(block) - y0])
         while line.size >= size:
-            yield y0 + _filtered(line[:size], H, upsample, past, step)[:, early:]
+            yield y0 + _filtered(line[:size], kept or rows(), upsample, past, step)[:, early:]
             line, early = line[step:], 0
     rest = line.size - past - lead
     if rest > 0:
         line = np.concatenate([line, np.full(size - line.size, line[-1])])
-        yield y0 + _filtered(line, H, upsample, past, rest)[:, early:]
+        yield y0 + _filtered(line, kept or rows(), upsample, past, rest)[:, early:]
 
 
-def _filtered(line: Floats, H: Complex, upsample: int, past: int, count: int) -> Floats:
+def _filtered(line: Floats, rows: Iterable[Complex], upsample: int, past: int, count: int) -> Floats:
     """Transform one stretch, and return ``count`` samples after ``past``, each with those between it and the last."""
     spectrum = np.fft.rfft(line) * upsample
     size = line.size * upsample
     kept = slice((past - 1) * upsample + 1, (past + count - 1) * upsample + 1)
-    return np.stack([np.fft.irfft(spectrum * row, size)[kept] for row in H])
+    return np.stack([np.fft.irfft(spectrum * row, size)[kept] for row in rows])
 
 
 def _checked(block: ArrayLike) -> Floats:
