@@ -16,7 +16,7 @@ from springlife.duty.counting import Count, count
 from springlife.duty.schedule import Event, Pass
 
 if TYPE_CHECKING:
-    from springlife.duty.record import RecordSummary
+    from springlife.duty.record import RecordSpec, RecordSummary
     from springlife.duty.schedule import Floats
     from springlife.life.case import Case, EventInput
     from springlife.spring.helical import HelicalSpring
@@ -192,11 +192,12 @@ def _read_event(case: Case, event: EventInput, spring: HelicalSpring) -> EventRe
     return _read_record(case, event, spring, off, past)
 
 
-def _read_record(case: Case, event: EventInput, spring: HelicalSpring, off: Beyond, past: Beyond) -> EventReading:
-    from springlife.duty.record import RecordSpec, SummaryAccumulator, open_record
+def record_spec(case: Case, event: EventInput) -> RecordSpec:
+    """Return how a recorded event of a case is to be read."""
+    from springlife.duty.record import RecordSpec
 
     assert event.record is not None  # the case file has been checked
-    spec = RecordSpec(
+    return RecordSpec(
         path=case.beside(event.record),
         channel=event.channel,
         time=event.time,
@@ -209,7 +210,12 @@ def _read_record(case: Case, event: EventInput, spring: HelicalSpring, off: Beyo
         invert=event.invert,
         gaps=event.gaps,
     )
-    recording = open_record(spec)
+
+
+def _read_record(case: Case, event: EventInput, spring: HelicalSpring, off: Beyond, past: Beyond) -> EventReading:
+    from springlife.duty.record import SummaryAccumulator, open_record
+
+    recording = open_record(record_spec(case, event))
     slope, intercept = line_of(event.measures, spring, event.installed_deflection or 0.0)
     summary, total = SummaryAccumulator(recording), Count()
     for block in recording.blocks():
