@@ -1,8 +1,8 @@
 """Fast ways to read a block of whole rows of a text table.
 
 Each way accepts a subset of what the cell-by-cell reader accepts, with the same values, and refuses (None)
-whatever needs care. Arrow comes cheap and reads any decimal fraction correctly; the compiled kernel takes a
-third of a second to load and is several times faster then.
+whatever needs care. Arrow comes cheap and reads any decimal fraction correctly; the compiled kernel takes most of a
+second to load and is two to three times faster then.
 """
 
 from __future__ import annotations
@@ -26,7 +26,7 @@ if TYPE_CHECKING:
 Parsed = tuple[Floats, Floats | Stamps | None]
 Way = Literal["kernel", "arrow"]
 SHORT = 1 << 20  # bytes; a shorter file is read cell by cell before Arrow has loaded
-LONG = 1 << 26  # bytes; from here on the kernel pays for loading it
+LONG = 200_000_000  # bytes of text read in this process; from here on the kernel pays for loading it
 
 
 @dataclass(frozen=True)
@@ -44,11 +44,16 @@ class Columns:
     clock: Literal["numbers", "stamps", "zoned stamps"] = "numbers"
 
 
+_asked = 0  # bytes of text read in this process, which decides about speed and nothing else
+
+
 def ways_for(size: int, columns: Columns) -> tuple[Way, ...]:
     """Return the ways to try, in order, for a file of so many bytes."""
+    global _asked
+    _asked += size
     if size < SHORT:
         return ()
-    if columns.clock == "numbers" and (size >= LONG or "numba" in sys.modules) and _kernel_loads():
+    if columns.clock == "numbers" and (_asked >= LONG or "numba" in sys.modules) and _kernel_loads():
         return ("kernel", "arrow")
     return ("arrow",)
 
@@ -57,7 +62,7 @@ def _kernel_loads() -> bool:
     """Tell whether the kernel can be used: numba needs a folder in which to keep what it compiles."""
     try:
         import springlife.duty.formats.kernel  # noqa: F401
-    except RuntimeError:
+    except (ImportError, RuntimeError):
         return False
     return True
 
