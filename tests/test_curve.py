@@ -281,22 +281,22 @@ def test_a_curve_file_without_such_springs(tmp_path: Path) -> None:
     ("old", "new", "said"),
     [
         ("format = 1", "format = 2", "format is 2; this version reads format = 1"),
-        ("format = 1\n", "", "format is missing; add it as a whole number"),
+        ("format = 1\n", "", "format is missing; write a whole number"),
         ("title = ", "titel = ", "titel is not a known key; did you mean 'title'"),
         ('criterion = "gerber"', 'criterion = "geber"', "did you mean 'gerber'"),
         ("reliability = 0.9", "reliability = 90", "reliability is 90; it must be between 0 and 1"),
-        ('source = "own tests"', "source = 7", "source is 7; it must be text in quotes"),
+        ('source = "own tests"', "source = 7", "source is 7; write text in quotes"),
         ("slope = 10", "slope = -10", r"group\[1\].line.slope is -10; it must be above zero"),
         ("slope = 10", "slop = 10", r"group\[1\].line.slop is not a known key; did you mean 'slope'"),
         ('"400 MPa"', '"400"', r"group\[1\].line.amplitude: '400' has no unit; write a stress"),
-        ('"400 MPa"', "400", r"group\[1\].line.amplitude is 400; it must be text in quotes"),
+        ('"400 MPa"', "400", r"group\[1\].line.amplitude is 400; write text in quotes"),
         ('"400 MPa"', '"-4 MPa"', r"group\[1\].line.amplitude is '-4 MPa'; it must be above zero"),
         ("longest = 1e7", "longest = 1e4", "shortest 20000 must be less than longest 10000"),
         ("tested = { shortest = 2e4, longest = 1e7 }\n", "", r"group\[1\].tested is missing"),
         ("line = {", "points = [{cycles = 1, amplitude = '1 Pa'}]\nline = {", "one of points and line"),
         ("1e6, amplitude = \"50 kpsi\"", "1e3, amplitude = \"50 kpsi\"", "cycles must rise"),
-        ("shot_peened = true", 'shot_peened = "yes"', "shot_peened is 'yes'; it must be true or false"),
-        ("cycles = 1e4", 'cycles = "1e4"', r"group\[2\].points\[1\].cycles is '1e4'; it must be a number"),
+        ("shot_peened = true", 'shot_peened = "yes"', "shot_peened is 'yes'; write true or false"),
+        ("cycles = 1e4", 'cycles = "1e4"', r"group\[2\].points\[1\].cycles is '1e4'; write a number"),
         ("[[group]]", "[group]", "not valid TOML"),
     ],
 )  # fmt: skip
@@ -315,7 +315,7 @@ def test_curve_files_that_cannot_be_read(tmp_path: Path) -> None:
     (tmp_path / "bytes.toml").write_bytes(b"\xff\xfe\x00")
     with pytest.raises(InputError, match="not valid TOML"):
         read_curve(tmp_path / "bytes.toml")
-    with pytest.raises(InputError, match="group must be a list of one or more tables"):
+    with pytest.raises(InputError, match="write a list of one or more tables"):
         read_curve(curve_file(tmp_path, CURVE_FILE.split("[[group]]")[0] + "group = []\n"))
 
 

@@ -11,12 +11,13 @@ import pytest
 
 PACKAGE = Path(__file__).parent.parent / "springlife"
 # What each folder may import besides itself, in the order of the job.
-BASE = {"errors", "units", "published", "files", "data"}
+BASE = {"errors", "units", "published", "files", "tables", "data"}
 MAY_IMPORT = {
     "errors": set(),
     "units": {"errors"},
     "published": {"errors", "units"},
     "files": {"errors"},
+    "tables": {"errors", "units"},
     "spring": BASE,
     "duty": BASE,
     "strength": BASE,

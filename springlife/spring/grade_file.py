@@ -4,13 +4,11 @@ from __future__ import annotations
 
 import tomllib
 from collections.abc import Iterator
-from dataclasses import dataclass
 from math import inf
-from typing import Any
 
 from springlife.errors import InputError, nearest
 from springlife.spring.grade import Grade, Moduli, Tensile
-from springlife.units import parse
+from springlife.tables import Table, number
 
 # Groups of numbers, each with a source, and the keys inside.
 _GROUPS = {
@@ -26,67 +24,6 @@ _SINGLE = ("title", "standard", "ferrous", "stainless", "cyclic_family", "note")
 _PROVENANCES = ("published", "memory", "common practice", "certificate", "test")
 
 
-@dataclass(frozen=True)
-class _Place:
-    """A table of the file; ``where`` is the file and the keys that lead here."""
-
-    raw: dict[str, Any]
-    where: str
-
-    def wrong(self, key: str, remedy: str) -> InputError:
-        seen = f"is {self.raw[key]!r}" if key in self.raw else "is missing"
-        return InputError(f"{self.where}{key} {seen}; {remedy}")
-
-    def only(self, *keys: str) -> None:
-        for key in self.raw:
-            if key not in keys:
-                raise InputError(f"{self.where}{key} is not a known key; {nearest(key, keys)}")
-
-    def text(self, key: str, otherwise: str | None = None) -> str:
-        value = self.raw.get(key, otherwise)
-        if not isinstance(value, str):
-            raise self.wrong(key, "write text in quotes")
-        return value
-
-    def flag(self, key: str, otherwise: bool | None = None) -> bool:
-        value = self.raw.get(key, otherwise)
-        if not isinstance(value, bool):
-            raise self.wrong(key, "write true or false")
-        return value
-
-    def quantity(self, key: str, kind: str) -> float:
-        """Return a quantity above zero, SI."""
-        try:
-            value = parse(self.text(key), kind)
-        except InputError as error:
-            raise InputError(f"{self.where}{key}: {error}") from error
-        if not value > 0:
-            raise self.wrong(key, "it must be above zero")
-        return value
-
-    def number(self, key: str, low: float, high: float) -> float:
-        value = self.raw.get(key)
-        return _number(value, low, high, self.wrong(key, f"write a number from {low:g} to {high:g}"))
-
-    def table(self, key: str) -> _Place:
-        value = self.raw.get(key)
-        if not isinstance(value, dict):
-            raise self.wrong(key, "write it as a table, as the package's own grades do")
-        return _Place(value, f"{self.where}{key}.")
-
-    def tables(self, key: str) -> list[_Place]:
-        value = self.raw.get(key)
-        if not isinstance(value, list) or not value or not all(isinstance(one, dict) for one in value):
-            raise self.wrong(key, "write a list of one or more tables")
-        return [_Place(one, f"{self.where}{key}[{i}].") for i, one in enumerate(value, start=1)]
-
-
-def _number(value: object, low: float, high: float, fault: InputError) -> float:
-    if isinstance(value, bool) or not isinstance(value, (int, float)) or not low <= value <= high:
-        raise fault
-    return float(value)
-
-
 def read_grades(text: str, where: str) -> dict[str, Grade]:
     """Return the grades of a TOML text by name; ``where`` names the file in messages.
 
@@ -99,11 +36,11 @@ def read_grades(text: str, where: str) -> dict[str, Grade]:
         raw = tomllib.loads(text)
     except tomllib.TOMLDecodeError as error:
         raise InputError(f"{where}: not valid TOML: {error}") from error
-    whole = _Place(raw, f"{where}: ")
+    whole = Table(raw, f"{where}: ")
     return {name: _grade(name, whole.table(name)) for name in raw}
 
 
-def _grade(name: str, place: _Place) -> Grade:
+def _grade(name: str, place: Table) -> Grade:
     place.only(*_SINGLE, *_GROUPS)
     if ("tensile" in place.raw) == ("tensile_strength" in place.raw):
         raise InputError(f"{place.where[:-1]}: give exactly one of tensile and tensile_strength")
@@ -132,7 +69,7 @@ def _grade(name: str, place: _Place) -> Grade:
     )
 
 
-def _source(key: str, group: _Place) -> str:
+def _source(key: str, group: Table) -> str:
     """Check a group's keys and return where its numbers come from, as one line."""
     group.only(*_GROUPS[key], "source", "provenance")
     source, provenance = group.text("source"), group.text("provenance", "certificate")
@@ -141,7 +78,7 @@ def _source(key: str, group: _Place) -> str:
     return f"{key.replace('_', ' ')}: {source} ({provenance})"
 
 
-def _tensile(place: _Place) -> tuple[tuple[Tensile, ...], tuple[float, float] | None]:
+def _tensile(place: Table) -> tuple[tuple[Tensile, ...], tuple[float, float] | None]:
     """Return the segments, and the bounds of a strength that is given directly."""
     if "tensile" in place.raw:
         return tuple(_segments(place.table("tensile"))), None
@@ -155,7 +92,7 @@ def _tensile(place: _Place) -> tuple[tuple[Tensile, ...], tuple[float, float] | 
     return (Tensile(value, 1.0, 0.0, 0.0, inf),), bounds
 
 
-def _segments(group: _Place) -> Iterator[Tensile]:
+def _segments(group: Table) -> Iterator[Tensile]:
     above = None
     for one in group.tables("segments"):
         one.only("A", "at", "m", "from", "to")
@@ -174,7 +111,7 @@ def _segments(group: _Place) -> Iterator[Tensile]:
         yield segment
 
 
-def _moduli(group: _Place) -> Iterator[Moduli]:
+def _moduli(group: Table) -> Iterator[Moduli]:
     segments = group.tables("segments")
     above = 0.0
     for one in segments:
@@ -192,10 +129,10 @@ def _moduli(group: _Place) -> Iterator[Moduli]:
         yield Moduli(high, E, G)
 
 
-def _after(static: _Place, before: float) -> tuple[float, float]:
+def _after(static: Table, before: float) -> tuple[float, float]:
     fault = static.wrong("after", f"write its lower and upper end, such as [0.65, 0.75], from {before:g} to 1")
     ends = static.raw.get("after")
     if not isinstance(ends, list) or len(ends) != 2:
         raise fault
-    low = _number(ends[0], before, 1.0, fault)
-    return low, _number(ends[1], low, 1.0, fault)
+    low = number(ends[0], before, 1.0, fault)
+    return low, number(ends[1], low, 1.0, fault)

@@ -19,7 +19,7 @@ from numpy.typing import ArrayLike
 from springlife.errors import CriterionError, FileError, InputError, nearest
 from springlife.strength.criteria import CRITERIA, Criterion, Floats
 from springlife.strength.endurance import BASES, Fractions, data, handbook, zimmerli
-from springlife.strength.table import Table
+from springlife.tables import Table
 from springlife.units import METRIC
 
 Miner = str  # a key of MINERS
@@ -330,15 +330,15 @@ def read_curve(path: str | Path) -> CurveFile:
         raise InputError(f"{path}: not valid TOML: {error}") from error
     top = Table(raw, f"{path}: ")
     top.only("format", "title", "source", "criterion", "reliability", "confidence", "group")
-    if top.get("format", int) != FORMAT:
+    if top.whole("format") != FORMAT:
         raise InputError(f"{path}: format is {raw['format']}; this version reads format = {FORMAT}")
-    name = top.get("criterion", str)
+    name = top.text("criterion")
     if name not in CRITERIA:
         raise InputError(f"{path}: criterion {name!r} is not known; {nearest(name, CRITERIA)}")
     return CurveFile(
         path=path,
-        title=top.get("title", str),
-        source=top.get("source", str),
+        title=top.text("title"),
+        source=top.text("source"),
         criterion=name,
         groups=tuple(_group(group, path, top) for group in top.tables("group")),
     )
@@ -352,7 +352,7 @@ def _group(table: Table, path: Path, top: Table) -> CurveGroup:
         given = table.tables("points")
         for point in given:
             point.only("cycles", "amplitude")
-        points = tuple((point.positive("cycles"), point.stress("amplitude")) for point in given)
+        points = tuple((point.positive("cycles"), point.quantity("amplitude", "stress")) for point in given)
         first, last = points[0][0], points[-1][0]
         if "tested" in table.raw:
             first, last = _tested(table)
@@ -360,14 +360,14 @@ def _group(table: Table, path: Path, top: Table) -> CurveGroup:
         first, last = _tested(table)
         line = table.table("line")
         line.only("slope", "cycles", "amplitude")
-        k, N, S = line.positive("slope"), line.positive("cycles"), line.stress("amplitude")
+        k, N, S = line.positive("slope"), line.positive("cycles"), line.quantity("amplitude", "stress")
         points = tuple((life, S * (N / life) ** (1 / k)) for life in (first, last))
-    peened = table.get("shot_peened", bool) if "shot_peened" in table.raw else None
-    name = table.get("name", str)
+    peened = table.flag("shot_peened") if "shot_peened" in table.raw else None
+    name = table.text("name")
     life = LifeCurve(
         points=points,
         label=f"{path.name}, {name}",
-        sources=(top.get("source", str),),
+        sources=(top.text("source"),),
         valid_from=first,
         valid_to=last,
         reliability=top.share("reliability") if "reliability" in top.raw else None,
