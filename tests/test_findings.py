@@ -157,6 +157,12 @@ def test_baked_plating_is_not_a_finding(tmp_path: Path) -> None:
     assert {finding.code for finding in judged(tmp_path, changes).findings} == ALWAYS
 
 
+def test_reaching_solid_or_the_seat_exactly_is_not_passing_it(tmp_path: Path) -> None:
+    # ys = 55 - 12 x 2 = 31 mm; the travel record returns to its free length through 5 - 5 mm.
+    codes = {finding.code for finding in judged(tmp_path, [('"20 mm"', '"31 mm"'), ('"5 mm"', '"0 mm"')]).findings}
+    assert "past-solid" not in codes and "lift-off" not in codes and "near-solid" in codes
+
+
 def test_waiver_lifts_a_stop_by_name_and_reason(tmp_path: Path) -> None:
     waiver = '[[waive]]\nfinding = "past-solid"\nby = "R. Viewer"\nreason = "stop pad closes the stroke"\n[judge]'
     result = judged(tmp_path, [('"20 mm"', '"32 mm"'), ("[judge]", waiver)])

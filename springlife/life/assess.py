@@ -380,7 +380,8 @@ def _factors(
             else rule.safety_factor(tau_a, tau_m, *strengths)
         )
         factors[name.replace("-", "_")] = float(factor)
-    factors["yield"] = float(yield_factor(tau_a, tau_m, spring.static_limit))
+    # Against yield as the static check has it: after set removal with the direct-shear factor and its own limit.
+    factors["yield"] = float(yield_factor(0.0, model.stress.static(high), spring.static_limit))
     return factors
 
 

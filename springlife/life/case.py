@@ -136,6 +136,7 @@ class EventInput(_Table):
     offset: float = 0.0
     invert: bool = False
     gaps: Literal["error", "split"] = "error"
+    between: Literal["join", "split"] = "join"  # of the files of a folder or pattern
 
     @model_validator(mode="after")
     def _consistent(self) -> EventInput:

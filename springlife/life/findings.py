@@ -14,6 +14,7 @@ from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 
+from springlife.life.reading import ROUNDING
 from springlife.units import UnitSystem, convert, significant
 
 if TYPE_CHECKING:
@@ -151,7 +152,7 @@ def of_motion(
 
 
 def _solid(duty: Duty, high: float, solid: float, limits: Mapping[str, float], say: UnitSystem) -> Iterator[Finding]:
-    if high > solid:
+    if high > solid + ROUNDING:
         past = [
             f"{event.name!r} {event.past_solid.describe()}"
             for event in duty.events
@@ -173,7 +174,7 @@ def _solid(duty: Duty, high: float, solid: float, limits: Mapping[str, float], s
 
 
 def _lift_off(duty: Duty, low: float, limits: Mapping[str, float], say: UnitSystem) -> Iterator[Finding]:
-    if low >= 0:
+    if low >= -ROUNDING:
         return
     off = [event for event in duty.events if event.off_seat.any]
     worst = max((event.off_seat.share for event in off), default=0.0)

@@ -12,7 +12,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from springlife.duty.counting import Count, count
+from springlife.duty.counting import Count, Tally, count
 from springlife.duty.schedule import Event, Pass
 
 if TYPE_CHECKING:
@@ -22,6 +22,7 @@ if TYPE_CHECKING:
     from springlife.spring.helical import HelicalSpring
 
 Line = tuple[float, float]
+ROUNDING = 1e-9  # m: a nanometre past a limit is the arithmetic's, not the spring's
 
 
 def line_of(measures: str, spring: HelicalSpring | None, installed: float) -> Line:
@@ -52,7 +53,7 @@ class Beyond:
     def feed(self, deflection: Floats) -> None:
         """Take the next block of deflections in m."""
         past = self.sign * (deflection - self.limit)
-        over = past > 0
+        over = past > ROUNDING
         self.total += int(np.count_nonzero(~np.isnan(deflection)))
         if over.any():
             self.samples += int(np.count_nonzero(over))
@@ -66,7 +67,7 @@ class Beyond:
         """Take one end of counted cycles, m, and how many there are of each; shapes (n,)."""
         self.what = "cycles"
         past = self.sign * (ends - self.limit)
-        over = past > 0
+        over = past > ROUNDING
         self.total += int(cycles.sum())
         self.samples += int(cycles[over].sum())
         self.visits = self.samples
@@ -209,6 +210,7 @@ def record_spec(case: Case, event: EventInput) -> RecordSpec:
         offset=event.offset,
         invert=event.invert,
         gaps=event.gaps,
+        between=event.between,
     )
 
 
@@ -217,14 +219,15 @@ def _read_record(case: Case, event: EventInput, spring: HelicalSpring, off: Beyo
 
     recording = open_record(record_spec(case, event))
     slope, intercept = line_of(event.measures, spring, event.installed_deflection or 0.0)
-    summary, total = SummaryAccumulator(recording), Count()
+    pieces = "split" in (event.gaps, event.between)
+    summary, tally = SummaryAccumulator(recording), Tally(nan="split" if pieces else "error")
     for block in recording.blocks():
         summary.feed(block)
-        total = total + count(block, nan="split" if event.gaps == "split" else "error")
+        tally.feed(block)
         for watch in (off, past):
             watch.feed(slope * block + intercept)
     off.sample_rate = past.sample_rate = recording.sample_rate
     return EventReading(
-        event.name, event.repeats, event.measures, event.installed_deflection or 0.0, total, off, past,
+        event.name, event.repeats, event.measures, event.installed_deflection or 0.0, tally.result(), off, past,
         event.record, recording.sha256, summary.result(), recording.provenance,
     )  # fmt: skip
