@@ -64,11 +64,13 @@ def _parser() -> argparse.ArgumentParser:
     )
     parser.add_argument("--version", action="version", version=f"springlife {__version__}")
     commands = parser.add_subparsers(title="commands", metavar="COMMAND", parser_class=_Parser)
-    _case_command(commands, "assess", _assess, "judge a case: life, damage, margin, findings")
+    assess = _case_command(commands, "assess", _assess, "judge a case: life, damage, margin, findings")
+    assess.add_argument("--surge", action="store_true", help="also with the wave in the coils; its verdict counts")
     _case_command(commands, "check", _check, "read everything a case names, judge nothing")
     _compare_command(commands)
     _count_command(commands)
     _scatter_command(commands)
+    _case_command(commands, "surge", _surge, "judge every coil with the wave in the wire, beside the static judgement")
     grades = commands.add_parser("grades", help="list the wire grades with their strengths", epilog=CAUTION)
     grades.add_argument("grade", nargs="?", help="one grade in full")
     grades.add_argument("--file", metavar="GRADES.toml", help="a grades file of your own")
@@ -188,12 +190,34 @@ def _assess(arguments: argparse.Namespace) -> int:
     from springlife.life.assess import assess
 
     result = assess(arguments.case)
+    wave = None
+    if arguments.surge and result.judgement is not None:
+        from springlife.life.surge import with_surge
+
+        wave = with_surge(result)
     if arguments.json:
-        _print_json(result.to_dict())
+        _print_json(result.to_dict() | ({"surge": wave.to_dict() if wave else None} if arguments.surge else {}))
     else:
         from springlife.report.terminal import print_assessment
 
         print_assessment(result, CAUTION)
+        if wave:
+            from springlife.report.surge_text import print_surge_part
+
+            print_surge_part(wave)
+    return EXIT[wave.verdict if wave else result.verdict]
+
+
+def _surge(arguments: argparse.Namespace) -> int:
+    from springlife.life.surge import surge
+
+    result = surge(arguments.case)
+    if arguments.json:
+        _print_json(result.to_dict())
+    else:
+        from springlife.report.surge_text import print_surge
+
+        print_surge(result, CAUTION)
     return EXIT[result.verdict]
 
 
