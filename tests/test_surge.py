@@ -20,11 +20,12 @@ from springlife.spring.surge import (
     local_deflection,
     needed_rate,
     peak_factor,
+    periodic,
     response,
     transfer,
-    upsampled,
     wave_of,
 )
+from springlife.spring.surge_filter import upsampled
 
 SPRING = HelicalSpring(grade=grade("A228"), wire_diameter=2e-3, mean_diameter=16e-3, total_coils=12, free_length=60e-3)
 T = 0.01
@@ -196,6 +197,27 @@ def test_what_is_above_the_band_is_left_out() -> None:
     assert np.abs(dirty - clean)[:, :-1200].max() < 1e-9
     # 8 f1 is a natural frequency; by hand |H| = n/zeta = 800, so that 10 um would read as 8 mm.
     assert np.abs(local(y + hum, rate) - clean)[:, -2000:-1200].max() > 6e-3
+
+
+def test_a_motion_that_repeats_for_ever_is_the_steady_state_of_one_that_goes_on() -> None:
+    # Independent: march the history until its start has died away.
+    def turn(n: int) -> NDArray[np.float64]:
+        angle = 2 * np.pi * np.arange(n) / n
+        return np.asarray(0.02 + 1e-3 * np.cos(angle) + 4e-4 * np.sin(3 * angle))
+
+    steady = periodic(turn(200), 20.0, WAVE, PLACES, up_to=70.0)
+    assert steady.shape == (PLACES.size, 200)
+    late = local(np.tile(turn(200), 140), 4000.0)[:, 130 * 200 : 131 * 200]
+    assert np.abs(steady - late).max() < 1e-7
+    # Static limit: a very slow turn moves every coil alike.
+    assert periodic(turn(200), 1e-4, WAVE, PLACES) == pytest.approx(np.tile(turn(990), (5, 1)), abs=1e-8)
+
+
+def test_harmonics_above_the_band_are_left_out_and_peaks_are_sampled() -> None:
+    # By hand: the third harmonic of 20 Hz is above 50 Hz, the second is kept: ten samples of it a cycle make 20.
+    turn = np.cos(2 * np.pi * np.arange(8) / 8) + np.cos(6 * np.pi * np.arange(8) / 8)
+    steady = periodic(turn, 20.0, Wave(1e-9, 0.01), [0.5], up_to=50.0)
+    assert steady[0] == pytest.approx(np.cos(2 * np.pi * np.arange(20) / 20), abs=1e-8)
 
 
 def test_a_short_history_is_served() -> None:

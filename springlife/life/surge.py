@@ -17,12 +17,15 @@ import numpy as np
 from springlife import __version__
 from springlife.duty.counting import Count, Tally
 from springlife.errors import InputError
+from springlife.life import cam
 from springlife.life.assess import Assessment, Judgement, assess, judge
+from springlife.life.cam import CamSweep, sweeps
 from springlife.life.case import Case
 from springlife.life.limits import limit_values
 from springlife.life.reading import Beyond, Duty, record_spec
 from springlife.life.result import finite
-from springlife.spring.surge import Floats, Wave, local_deflection, needed_rate, peak_factor, settings, wave_of
+from springlife.spring.surge import Wave, local_deflection, needed_rate, peak_factor, settings, wave_of
+from springlife.spring.surge_filter import Floats
 from springlife.units import significant
 
 if TYPE_CHECKING:
@@ -86,6 +89,7 @@ class SurgeResult:
     positions: Floats  # from 0 at the fixed end to 1 at the moving one
     dampings: tuple[Damped, ...]  # ascending damping ratio
     events: tuple[EventSurge, ...]
+    cams: tuple[CamSweep, ...]
 
     @property
     def case(self) -> Case:
@@ -166,6 +170,7 @@ class SurgeResult:
                 }
                 for event in self.events
             ],
+            "cams": [sweep.to_dict(self.coil) for sweep in self.cams],
             "warnings": list(self.warnings),
             "findings": [finding.to_dict() for finding in self.assessment.findings],
             "inputs": [{"path": name, "sha256": digest} for name, digest in self.assessment.inputs],
@@ -218,7 +223,8 @@ def with_surge(assessment: Assessment) -> SurgeResult:
         one, followed = _damped(assessment, replace(wave, zeta=ratio), positions)
         dampings.append(one)
         events = followed if ratio == zeta else events
-    return SurgeResult(assessment, wave, positions, tuple(dampings), events)
+    cams = sweeps(case, assessment.judgement, wave, positions)
+    return SurgeResult(assessment, wave, positions, tuple(dampings), events, cams)
 
 
 def _range(case: Case, zeta: float) -> list[float]:
@@ -383,3 +389,5 @@ def _warnings(result: SurgeResult) -> Iterator[str]:
         inside = (event.low < 0)[1:-1]
         if inside.any():
             yield f"{event.name!r} stretches coils away from the ends; tension counts as no stress"
+    for sweep in result.cams:
+        yield from cam.warnings(sweep)

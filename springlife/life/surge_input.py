@@ -21,6 +21,18 @@ def _amount(kind: str) -> Any:
     return BeforeValidator(lambda text: parse(text, kind))
 
 
+class CamInput(_Table):
+    """One [[surge.cam]]: the lift over one turn of a cam that moves the spring's end, and the speeds to judge."""
+
+    name: Annotated[str, Field(min_length=1)]
+    cam: str  # the lift table, a file beside the case
+    angle: str | int  # column of the cam angle, in degrees, over one whole turn
+    lift: str | int  # column of the lift
+    unit: str | None = None  # of the lift
+    installed_deflection: Annotated[float, _amount("length"), Field(ge=0)]  # at no lift
+    speeds: Annotated[list[Annotated[float, Field(gt=0)]], Field(min_length=1, max_length=1000)]  # turns a minute
+
+
 class SurgeInput(_Table):
     """The [surge] table; what is left out comes from data/surge.toml."""
 
@@ -29,9 +41,14 @@ class SurgeInput(_Table):
     positions: Annotated[int, Field(ge=2, le=500)] | None = None  # places along the wire, both ends included
     up_to: Annotated[float, _amount("frequency"), Field(gt=0)] | None = None  # motion above is left out
     moving_ends: Literal["one", "both"] = "one"
+    cam: list[CamInput] = []
 
     @model_validator(mode="after")
     def _ordered(self) -> SurgeInput:
+        names = [cam.name for cam in self.cam]
+        twice = sorted({name for name in names if names.count(name) > 1})
+        if twice:
+            raise ValueError(f"cam name {twice[0]!r} is used twice; give each cam its own")
         if self.damping_range is None:
             return self
         low, high = self.damping_range

@@ -9,6 +9,7 @@ from springlife.report.terminal import quantity_of_life as life_text
 from springlife.units import significant
 
 if TYPE_CHECKING:
+    from springlife.life.cam import CamSweep
     from springlife.life.surge import Damped, EventSurge, SurgeResult
 
 READ_AS = (
@@ -54,6 +55,8 @@ def print_surge_part(result: SurgeResult) -> None:
         *(f"fixed seat, {unit}", f"moving seat, {unit}", "gap closed", "lift-off"),
     )
     print_table(console, "Events", heads, [_event_row(result, event) for event in result.events])
+    for cam in result.cams:
+        _print_cam(result, cam)
     console.print()
     print_rows(console, [("warn", text) for text in result.warnings], style="yellow")
     print_rows(console, [("read as", READ_AS), ("coils", "counted in active coils from the fixed end")], style="dim")
@@ -77,3 +80,22 @@ def _event_row(result: SurgeResult, event: EventSurge) -> tuple[str, ...]:
     ]
     shares = [f"{significant(100 * share, 2)} %" if share else "no" for share in (event.closed, event.lifted)]
     return event.name, significant(event.amplification), significant(result.coil(event.worst), 2), *forces, *shares
+
+
+def _print_cam(result: SurgeResult, cam: CamSweep) -> None:
+    """Print a cam, a row a speed."""
+    force = result.assessment.say.units["force"]
+    heads = ("rpm", "times static", "coil", f"least seat force, {force}", "damage a turn", "hours to damage 1")
+    rows = [
+        (
+            f"{one.turns_per_minute:g}",
+            significant(one.amplification),
+            significant(result.coil(one.place), 2),
+            result.assessment.say.number(one.least_seat_force, "force", 3),
+            significant(one.damage, 3),
+            "unlimited" if one.hours is None else significant(one.hours, 3),
+        )
+        for one in cam.speeds
+    ]
+    slow = significant(cam.slow_damage, 3)
+    print_table(console_for_output(), f"Cam {cam.name!r} (damage a turn in slow motion {slow})", heads, rows)

@@ -11,29 +11,24 @@ from __future__ import annotations
 
 import math
 import tomllib
-from collections.abc import Callable, Iterable, Iterator, Sequence
+from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
 from functools import cache, partial
 from importlib.resources import files
-from itertools import chain
 from typing import Any, Literal
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import ArrayLike
 
 from springlife.errors import InputError
 from springlife.spring.helical import HelicalSpring
+from springlife.spring.surge_filter import Band, Complex, Floats, Start, finite_row, overlap_save
 from springlife.units import significant
 
-Floats = NDArray[np.float64]
-Complex = NDArray[np.complex128]
 MovingEnds = Literal["one", "both"]
-Start = Literal["rest", "moving"]
 
-# Numerical settings: what is left of a wave when it is forgotten, and of the ripple of the band's end; the part of
-# the rate over which the band ends, and deviations of the Gaussian that ends it (1e-9 beyond either side); the
-# longest memory in samples; kernel values kept rather than computed again for every block.
-TRUNCATION, RIPPLE, BAND_END, DEVIATIONS, LONGEST, KEPT = 1e-6, 1e-9, 0.1, 6.0, 1 << 19, 1 << 22
+# Numerical settings: what is left of a wave when it is forgotten; the longest memory in samples.
+TRUNCATION, LONGEST = 1e-6, 1 << 19
 
 
 @cache
@@ -223,7 +218,7 @@ def local_deflection(
         raise InputError(f"positions are {x.tolist()}; give a list of numbers from 0 (fixed end) to 1 (moving end)")
     if wave.zeta == 0:
         raise InputError("damping ratio is 0; without damping a wave is never forgotten, give one such as 0.01")
-    band = _Band.of(sample_rate, up_to)
+    band = Band.of(sample_rate, up_to)
     past = math.ceil(wave.memory * sample_rate) + band.ripple
     if past > LONGEST:
         raise InputError(
@@ -232,147 +227,45 @@ def local_deflection(
             f"resample the record to about {significant(10 * needed_rate(wave), 2)} Hz"
         )
     kernels = [partial(response, positions=one, wave=wave, moving_ends=moving_ends) for one in x[:, None]]
-    return _overlap_save(blocks, kernels, band, past, upsample, start)
+    return overlap_save(blocks, kernels, band, past, upsample, start)
 
 
-def upsampled(samples: ArrayLike, factor: int, sample_rate: float = 1.0) -> Floats:
-    """Return a history sampled ``factor`` times finer, by band-limited interpolation through the FFT.
+def periodic(
+    turn: ArrayLike,
+    frequency: float,
+    wave: Wave,
+    positions: ArrayLike,
+    *,
+    up_to: float | None = None,
+    moving_ends: MovingEnds = "one",
+) -> Floats:
+    """Return the steady local deflection under a motion that repeats for ever, such as a cam's.
 
     Parameters
     ----------
-    samples : array_like, shape (n,)
-        Beyond its ends the history is continued by its mirror image, odd about the end.
-    factor : int
-        At least 1.
-    sample_rate : float
-        Hz; only errors speak of it.
+    turn : array_like, shape (m,)
+        Deflection of one period, m, evenly spaced, the first sample not repeated at the end.
+    frequency : float
+        Periods a second, Hz.
+    wave, positions, moving_ends
+        As for :func:`local_deflection`.
+    up_to : float, optional
+        Hz: harmonics above are left out. All below half the samples a period are kept by default.
 
     Returns
     -------
-    ndarray, shape ((n - 1) * factor + 1,)
-        Content up to 0.4 of the sample rate passes; above it fades and is gone at half the rate.
+    ndarray, shape (positions, n)
+        m, over one period, with enough samples to see the peaks of the highest harmonic kept.
+
+    Notes
+    -----
+    Harmonic by harmonic: exact, with no start to die away.
     """
-    band = _Band.of(sample_rate, None)
-    past = 8 * band.ripple  # long against the kernel, which then does not feel the mirror image fade
-    parts = _overlap_save([samples], [lambda f: np.ones((1, f.size), complex)], band, past, factor, "moving")
-    return np.concatenate([part[0] for part in parts])
-
-
-@dataclass(frozen=True)
-class _Band:
-    """The frequencies kept: all up to ``up_to``, none above ``up_to + fade``, Hz."""
-
-    rate: float
-    up_to: float
-    fade: float
-
-    @classmethod
-    def of(cls, sample_rate: float, up_to: float | None) -> _Band:
-        if not 0 < sample_rate < math.inf:
-            raise InputError(f"sample rate is {sample_rate:g} Hz; it must be above 0 and finite")
-        most = (0.5 - BAND_END) * sample_rate
-        if up_to is None:
-            return cls(sample_rate, most, BAND_END * sample_rate)
-        if not 0 < up_to <= most * (1 + 1e-12):
-            raise InputError(f"up_to is {up_to:g} Hz; it must be above 0 and at most {most:g} Hz, 0.4 of the rate")
-        return cls(sample_rate, up_to, min(BAND_END * sample_rate, up_to / 4))
-
-    @property
-    def ripple(self) -> int:
-        """Samples after which the ripple of the band's end has gone: a Gaussian's transform is a Gaussian."""
-        deviation = self.fade / (2 * DEVIATIONS)
-        return math.ceil(math.sqrt(2 * math.log(1 / RIPPLE)) / (2 * math.pi * deviation) * self.rate)
-
-    def gain(self, frequency: Floats) -> Floats:
-        """Return the part of each frequency (Hz) that is kept."""
-        from scipy.special import erfc
-
-        return np.asarray(erfc((2 * (frequency - self.up_to) / self.fade - 1) * DEVIATIONS / math.sqrt(2)) / 2)
-
-
-def _overlap_save(
-    blocks: Iterable[ArrayLike],
-    kernels: Sequence[Callable[[Floats], Complex]],
-    band: _Band,
-    past: int,
-    upsample: int,
-    start: Start,
-) -> Iterator[Floats]:
-    """Filter a history, given in blocks, by kernels whose gain at 0 Hz is 1 and that reach ``past`` samples back.
-
-    A kernel gives its transfer function at frequencies in Hz, shape (1, n).
-    """
-    if upsample < 1:
-        raise InputError(f"upsample is {upsample}; it must be a whole number from 1")
-    lead, ahead = band.ripple, iter(blocks)
-    size = 1 << (2 * (past + lead) - 1).bit_length()
-    step = size - past - lead
-    first = _gathered(ahead, past + 1)
-    if not first.size:
-        return
-    y0 = first[0]
-    frequency = np.asarray(np.fft.rfftfreq(size, 1 / band.rate), dtype=np.float64)
-    gain = band.gain(frequency)
-
-    def rows() -> Iterator[Complex]:
-        return (kernel(frequency)[0] * gain for kernel in kernels)
-
-    kept = list(rows()) if len(kernels) * frequency.size <= KEPT else None
-    line = np.concatenate([_before(first, past, start), first]) - y0
-    early = upsample - 1  # samples between the one before the first and the first
-    for block in chain(ahead, [None]):
-        if block is None:
-            line = np.concatenate([line, _mirrored(line, lead)])
-        else:
-            line = np.concatenate([line, _checked(block) - y0])
-        while line.size >= size:
-            yield y0 + _filtered(line[:size], kept or rows(), upsample, past, step)[:, early:]
-            line, early = line[step:], 0
-    rest = line.size - past - lead
-    if rest > 0:
-        line = np.concatenate([line, np.full(size - line.size, line[-1])])
-        yield y0 + _filtered(line, kept or rows(), upsample, past, rest)[:, early:]
-
-
-def _filtered(line: Floats, rows: Iterable[Complex], upsample: int, past: int, count: int) -> Floats:
-    """Transform one stretch, and return ``count`` samples after ``past``, each with those between it and the last."""
-    spectrum = np.fft.rfft(line) * upsample
-    size = line.size * upsample
-    kept = slice((past - 1) * upsample + 1, (past + count - 1) * upsample + 1)
-    return np.stack([np.fft.irfft(spectrum * row, size)[kept] for row in rows])
-
-
-def _checked(block: ArrayLike) -> Floats:
-    values = np.asarray(block, dtype=np.float64)
-    if not np.isfinite(values).all():
-        raise InputError("the history has a gap or an infinite value; give its pieces one by one")
-    return values
-
-
-def _gathered(blocks: Iterator[ArrayLike], least: int) -> Floats:
-    """Take blocks until there are ``least`` samples, or all of them."""
-    found: list[Floats] = []
-    count = 0
-    for block in blocks:
-        found.append(_checked(block))
-        count += found[-1].size
-        if count >= least:
-            break
-    return np.concatenate(found) if found else np.empty(0)
-
-
-def _before(first: Floats, past: int, start: Start) -> Floats:
-    """Return what went before the first sample, ``past`` samples long."""
-    before = np.full(past, first[0])
-    if start == "moving":
-        seen = first[1 : past + 1]
-        fade = (1 + np.cos(np.pi * np.arange(1, seen.size + 1) / (seen.size + 1))) / 2
-        before[past - seen.size :] = (first[0] - fade * (seen - first[0]))[::-1]
-    return before
-
-
-def _mirrored(line: Floats, lead: int) -> Floats:
-    """Return what comes after the last sample, ``lead`` samples long: the history odd about its end."""
-    seen = line[-2 : -lead - 2 : -1]
-    after = 2 * line[-1] - seen
-    return np.concatenate([after, np.full(lead - after.size, after[-1] if after.size else line[-1])])
+    y = finite_row(turn)
+    x = np.atleast_1d(np.asarray(positions, dtype=np.float64))
+    most = (y.size - 1) // 2
+    kept = min(most, int(up_to / frequency)) if up_to else most
+    harmonics = np.arange(kept + 1, dtype=np.float64) * frequency
+    lines = np.asarray(np.fft.rfft(y), dtype=np.complex128)[: kept + 1] * response(harmonics, x, wave, moving_ends)
+    samples = max(y.size, math.ceil(float(settings()["peaks"]["samples"]) * kept))
+    return np.asarray(np.fft.irfft(lines, samples, axis=1) * (samples / y.size))

@@ -7,7 +7,8 @@ from typing import Any
 
 import numpy as np
 
-from springlife.spring.surge import Floats, Wave, impact_stress, transfer
+from springlife.spring.surge import Wave, impact_stress, transfer
+from springlife.spring.surge_filter import Floats
 from springlife.spring.surge_wave import march, struck
 from springlife.units import parse
 

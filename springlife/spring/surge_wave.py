@@ -16,7 +16,8 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from springlife.errors import InputError
-from springlife.spring.surge import Floats, Wave
+from springlife.spring.surge import Wave
+from springlife.spring.surge_filter import Floats
 
 LONG = 20_000  # steps from which compiling pays
 
