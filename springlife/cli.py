@@ -75,6 +75,7 @@ def _parser() -> argparse.ArgumentParser:
     grades.add_argument("grade", nargs="?", help="one grade in full")
     grades.add_argument("--file", metavar="GRADES.toml", help="a grades file of your own")
     _finish(grades, _grades)
+    _rig_command(commands)
     _fit_command(commands)
     verify = commands.add_parser("verify", help="recompute the published examples on this machine")
     _finish(verify, _verify)
@@ -102,6 +103,47 @@ def _compare_command(commands: Any) -> None:
         help="what stays as of the drawn spring (default: stroke)",
     )
     _figure_options(parser, "all options in one Haigh diagram")
+
+
+def _rig_command(commands: Any) -> None:
+    parser = _case_command(commands, "rig", _rig, "propose a constant-amplitude test with the duty's damage")
+    parser.add_argument(
+        "--low", metavar="LENGTH", help="least deflection, such as '12 mm' (default: the worst cycle's)"
+    )
+    parser.add_argument("--high", metavar="LENGTH", help="greatest deflection (default: the worst cycle's)")
+    parser.add_argument("--frequency", default="10 Hz", metavar="RATE", help="of the rig (default: 10 Hz)")
+    parser.add_argument("--reliability", type=float, default=0.9, help="to be shown (default: 0.9)")
+    parser.add_argument("--confidence", type=float, default=0.9, help="to show it with (default: 0.9)")
+    parser.add_argument("--life-factor", type=float, default=1.0, help="run each spring this many times longer")
+    parser.add_argument("--weibull-slope", type=float, default=2.0, help="used with --life-factor (default: 2)")
+    _figure_options(parser, "cycles over the test's deflection")
+
+
+def _rig(arguments: argparse.Namespace) -> int:
+    from springlife import units
+    from springlife.life.rig import rig
+
+    test = rig(
+        arguments.case,
+        low=None if arguments.low is None else units.parse(arguments.low, "length"),
+        high=None if arguments.high is None else units.parse(arguments.high, "length"),
+        frequency=units.parse(arguments.frequency, "frequency"),
+        reliability=arguments.reliability,
+        confidence=arguments.confidence,
+        life_factor=arguments.life_factor,
+        weibull_slope=arguments.weibull_slope,
+    )
+    if arguments.figure:
+        from springlife.report.figures_rig import rig_cycles
+
+        _save(rig_cycles(test), arguments)
+    if arguments.json:
+        _print_json(test.to_dict())
+    else:
+        from springlife.report.rig_text import print_rig
+
+        print_rig(test, CAUTION)
+    return 3 if test.stopped else 0
 
 
 def _fit_command(commands: Any) -> None:
