@@ -75,6 +75,8 @@ def _parser() -> argparse.ArgumentParser:
     grades.add_argument("grade", nargs="?", help="one grade in full")
     grades.add_argument("--file", metavar="GRADES.toml", help="a grades file of your own")
     _finish(grades, _grades)
+    sizing = _case_command(commands, "size", _size, "search the best spring inside the limits of [size]")
+    _figure_options(sizing, "life over mass")
     _rig_command(commands)
     _fit_command(commands)
     verify = commands.add_parser("verify", help="recompute the published examples on this machine")
@@ -103,6 +105,25 @@ def _compare_command(commands: Any) -> None:
         help="what stays as of the drawn spring (default: stroke)",
     )
     _figure_options(parser, "all options in one Haigh diagram")
+
+
+def _size(arguments: argparse.Namespace) -> int:
+    from springlife.life.size import size
+
+    result = size(arguments.case)
+    if arguments.figure:
+        from springlife.report.figures_size import life_over_mass
+
+        if not result.found:
+            raise InputError("--figure: no spring meets everything, so there is nothing to draw")
+        _save(life_over_mass(result), arguments)
+    if arguments.json:
+        _print_json(result.to_dict())
+    else:
+        from springlife.report.size_text import print_sizing
+
+        print_sizing(result, CAUTION)
+    return 0 if result.found else 1
 
 
 def _rig_command(commands: Any) -> None:

@@ -31,6 +31,7 @@ from springlife import units
 from springlife.errors import FileError, InputError, nearest
 from springlife.life.limits import LIMITS
 from springlife.life.scatter_input import ScatterInput
+from springlife.life.size_input import SizeInput
 from springlife.life.surge_input import SurgeInput
 from springlife.strength.endurance import BASES
 
@@ -240,6 +241,7 @@ class CaseInput(_Table):
     judge: JudgeInput = JudgeInput()
     limits: dict[str, float] = {}
     scatter: ScatterInput = ScatterInput()
+    size: SizeInput = SizeInput()
     surge: SurgeInput = SurgeInput()
     option: list[OptionInput] = []
     waive: list[WaiveInput] = []

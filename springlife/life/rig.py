@@ -120,7 +120,7 @@ def success_run(reliability: float, confidence: float, *, life_factor: float = 1
     for name, value in (("life factor", life_factor), ("Weibull slope", weibull_slope)):
         if not 0 < value < math.inf:
             raise InputError(f"{name} is {value:g}; it must be above zero")
-    exact = math.log(1 - confidence) / (life_factor**weibull_slope * math.log(reliability))
+    exact = math.log(1 - confidence) / (math.pow(life_factor, weibull_slope) * math.log(reliability))
     return max(1, math.ceil(exact - 1e-12))
 
 
@@ -232,8 +232,8 @@ def _against(
     greatest = spring.surge_frequency / limits["surge_ratio"]
     if frequency > greatest:
         message = (
-            f"rig frequency {significant(frequency, 3)} Hz is above 1/{limits['surge_ratio']:g} of the surge frequency, "
-            f"{significant(greatest, 3)} Hz"
+            f"rig frequency {significant(frequency, 3)} Hz is above {significant(greatest, 3)} Hz, "
+            f"1/{limits['surge_ratio']:g} of the surge frequency"
         )
         seen.append(found("near-surge", message, "stop"))
     return seen

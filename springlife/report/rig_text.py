@@ -27,9 +27,9 @@ def print_rig(test: RigTest, caution: str) -> None:
         if test.life_factor == 1
         else f" ({test.life_factor:g} times the {significant(test.exact_cycles)} of equal damage)"
     )
+    ends = [(say(y, "length"), say(float(j.spring.force(y)), "force")) for y in (test.low, test.high)]
     rows = [
-        ("limits", f"deflection {say(test.low, 'length')} to {say(test.high, 'length')}, force "
-                   f"{say(float(j.spring.force(test.low)), 'force')} to {say(float(j.spring.force(test.high)), 'force')}"),
+        ("limits", f"deflection {ends[0][0]} to {ends[1][0]}, force {ends[0][1]} to {ends[1][1]}"),
         ("stress", f"{say(tau_a, 'stress')} about {say(tau_m, 'stress')}"),
         ("cycles", f"{test.cycles}{factor}, {significant(test.hours, 3)} h at {significant(test.frequency, 3)} Hz"),
         ("damage", f"{significant(j.damage_at_target, 3)}, that of {case.duty.target} of the duty"),

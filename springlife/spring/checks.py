@@ -13,7 +13,7 @@ import numpy as np
 
 from springlife.spring.grade import grade
 from springlife.spring.helical import HelicalSpring, buckling_constant
-from springlife.spring.stress import FACTORS, StressMap, direct_shear, stress_map
+from springlife.spring.stress import FACTORS, StressMap, direct_shear, greatest_index, stress_map
 from springlife.units import parse
 
 _KINDS = {
@@ -102,9 +102,33 @@ def _cycle(spring: HelicalSpring, stress: StressMap, loads: Mapping[str, float])
     return {"tau_a": float(tau_a), "tau_m": float(tau_m)}
 
 
+def sized(inputs: Mapping[str, Any]) -> dict[str, float]:
+    """Return the spring of one wire that brings a cycle of force just to an amplitude, squared and ground ends."""
+    d, amplitude = parse(inputs["wire_diameter"], "length"), parse(inputs["amplitude"], "stress")
+    low, high = (parse(inputs[name], "force") for name in ("low_force", "high_force"))
+    rate = (high - low) / (parse(inputs["high_deflection"], "length") - parse(inputs["low_deflection"], "length"))
+    own = replace(grade(inputs["grade"]), density=parse(inputs["density"], "density"))
+    C = greatest_index(amplitude, 8 * (high - low) / 2 / (np.pi * d**2))
+    room = (1 + inputs["clash_allowance"]) * parse(inputs["high_deflection"], "length")
+    one = HelicalSpring(grade=own, wire_diameter=d, mean_diameter=C * d, total_coils=3, free_length=1.0)
+    total = one.calculated_rate / rate + 2  # one active coil: the rate is that of a single coil
+    spring = replace(one, total_coils=total, free_length=d * total + room)
+    factor = spring.static_limit / float(stress_map(spring).static(spring.solid_deflection))
+    return {
+        "index": C,
+        "mean_diameter": spring.mean_diameter,
+        "active_coils": spring.active_coils,
+        "solid_length": spring.solid_length,
+        "free_length": spring.free_length,
+        "factor_at_solid": factor,
+        "surge_frequency": spring.surge_frequency,
+    }
+
+
 METHODS: dict[str, Callable[[Mapping[str, Any]], dict[str, float]]] = {
     "wire": wire,
     "stress factors": stress_factors,
     "buckling constant": buckling,
     "spring": helical,
+    "sizing by amplitude": sized,
 }

@@ -61,6 +61,37 @@ def wahl(C: Index) -> Index:
     return (4 * C - 1) / (4 * C - 4) + 0.615 / C
 
 
+def greatest_index(amplitude: float, shear: float) -> float:
+    """Return the spring index at which Bergstraesser's factor brings a load just to a stress.
+
+    Parameters
+    ----------
+    amplitude : float
+        Stress to be reached, Pa.
+    shear : float
+        beta = 8 F/(pi d^2) of the load, Pa; below the amplitude by the factor that an index of about 2 needs.
+
+    Raises
+    ------
+    InputError
+        No index gives this stress: the wire is too thin for the load.
+
+    Notes
+    -----
+    KB beta C = amplitude, a quadratic in C; the larger root
+    C = (2a - b)/(4b) + sqrt(((2a - b)/(4b))^2 - 3a/(4b)).
+
+    References
+    ----------
+    Shigley's Mechanical Engineering Design, eq. 10-23 (memory).
+    """
+    half = (2 * amplitude - shear) / (4 * shear)
+    inside = half * half - 3 * amplitude / (4 * shear)
+    if half <= 0 or inside < 0:
+        raise InputError(f"no spring index brings the load to {amplitude:g} Pa; take a thicker wire")
+    return half + math.sqrt(inside)
+
+
 FACTORS: dict[str, Callable[[float], float]] = {"bergstraesser": bergstraesser, "wahl": wahl}
 CURVATURE_ON = ("both", "alternating")
 
