@@ -10,7 +10,7 @@ from pathlib import Path
 import pytest
 
 from springlife.cli import main
-from springlife.life.case import CaseInput
+from springlife.life.case_input import CaseInput
 
 ROOT = Path(__file__).parent.parent
 README = (ROOT / "README.md").read_text(encoding="utf-8")

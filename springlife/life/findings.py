@@ -20,7 +20,8 @@ from springlife.units import UnitSystem, convert, significant
 if TYPE_CHECKING:
     from springlife.duty.schedule import EventCycles
     from springlife.life.assess import Judgement
-    from springlife.life.case import Case, SpringInput, WaiveInput
+    from springlife.life.case import Case
+    from springlife.life.case_input import SpringInput, WaiveInput
     from springlife.life.damage import DamageModel, Floats
     from springlife.life.reading import Duty
     from springlife.spring.helical import HelicalSpring

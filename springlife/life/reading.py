@@ -18,7 +18,8 @@ from springlife.duty.schedule import Event, Pass
 if TYPE_CHECKING:
     from springlife.duty.record import RecordSpec, RecordSummary
     from springlife.duty.schedule import Floats
-    from springlife.life.case import Case, EventInput
+    from springlife.life.case import Case
+    from springlife.life.case_input import EventInput
     from springlife.spring.helical import HelicalSpring
 
 Line = tuple[float, float]

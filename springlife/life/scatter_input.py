@@ -2,32 +2,21 @@
 
 from __future__ import annotations
 
-from typing import Annotated, Any, Literal
+from typing import Annotated, Literal
 
-from pydantic import BaseModel, BeforeValidator, ConfigDict, Field, model_validator
+from pydantic import Field, model_validator
 
 from springlife.errors import nearest
-from springlife.units import parse
+from springlife.life.fields import Positive, Table, quantity
 
 VARIABLES = (
     "wire_diameter", "coil_diameter", "active_coils", "free_length", "shear_modulus", "tensile_strength",
     "endurance_strength", "life", "duty", "allowed_damage",
 )  # fmt: skip
 SAMPLES = (1024, 1 << 20)  # least and most: with fewer, the interval of B1 is too narrow
-Positive = Annotated[float, Field(gt=0)]
 
 
-class _Table(BaseModel):
-    """A table of the case file: no unknown keys, no silent conversions."""
-
-    model_config = ConfigDict(extra="forbid", strict=True, frozen=True, allow_inf_nan=False)
-
-
-def _amount(kind: str) -> Any:
-    return BeforeValidator(lambda text: parse(text, kind))
-
-
-class _Tolerance(_Table):
+class _Tolerance(Table):
     """A normal distribution cut off at the half-range; ``sigmas`` standard deviations make the half-range."""
 
     half_range: float | None = None
@@ -44,13 +33,13 @@ class _Tolerance(_Table):
 class LengthTolerance(_Tolerance):
     """A tolerance on a length."""
 
-    half_range: Annotated[float, _amount("length"), Field(gt=0)] | None = None
+    half_range: Annotated[float, quantity("length"), Field(gt=0)] | None = None
 
 
 class StressTolerance(_Tolerance):
     """A tolerance on a modulus or a strength."""
 
-    half_range: Annotated[float, _amount("stress"), Field(gt=0)] | None = None
+    half_range: Annotated[float, quantity("stress"), Field(gt=0)] | None = None
 
 
 class CoilTolerance(_Tolerance):
@@ -59,19 +48,19 @@ class CoilTolerance(_Tolerance):
     half_range: Positive | None = None
 
 
-class FactorScatter(_Table):
+class FactorScatter(Table):
     """A lognormal factor about its median, by its coefficient of variation."""
 
     cov: Annotated[float, Field(gt=0, le=2)]
 
 
-class LifeScatter(_Table):
+class LifeScatter(Table):
     """A lognormal factor on life, by the standard deviation of its decadic logarithm."""
 
     log10_sd: Annotated[float, Field(gt=0, le=2)]
 
 
-class ScatterInput(_Table):
+class ScatterInput(Table):
     """The [scatter] table; a variable left out takes its default from data/scatter.toml."""
 
     wire_diameter: LengthTolerance | None = None

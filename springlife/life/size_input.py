@@ -4,35 +4,28 @@ from __future__ import annotations
 
 from typing import Annotated, Literal
 
-from pydantic import BaseModel, BeforeValidator, ConfigDict, Field
+from pydantic import Field
 
-from springlife import units
+from springlife.life.fields import Table, quantity
 
-
-def _quantity(kind: str) -> BeforeValidator:
-    return BeforeValidator(lambda text: units.parse(text, kind))
+Size = Annotated[float, quantity("length"), Field(gt=0)]
 
 
-Length = Annotated[float, _quantity("length"), Field(gt=0)]
-
-
-class SizeInput(BaseModel):
+class SizeInput(Table):
     """Limits of the search, SI; what is left out is not limited, or is that of the drawn spring."""
-
-    model_config = ConfigDict(extra="forbid", strict=True, frozen=True, allow_inf_nan=False)
 
     goal: Literal["mass", "cost", "life"] = "mass"
     hold: Literal["stroke", "force"] = "stroke"
     grades: Annotated[list[str], Field(min_length=1)] | None = None
     peened: Annotated[list[bool], Field(min_length=1)] | None = None
-    sizes: Literal["metric", "inch"] | Annotated[list[Length], Field(min_length=1)] | None = None
-    largest_outer_diameter: Length | None = None
-    least_inner_diameter: Length | None = None
-    diameter_step: Length | None = None
-    rate: Annotated[float, _quantity("rate"), Field(gt=0)] | None = None
+    sizes: Literal["metric", "inch"] | Annotated[list[Size], Field(min_length=1)] | None = None
+    largest_outer_diameter: Size | None = None
+    least_inner_diameter: Size | None = None
+    diameter_step: Size | None = None
+    rate: Annotated[float, quantity("rate"), Field(gt=0)] | None = None
     rate_tolerance: Annotated[float, Field(gt=0, lt=1)] = 0.05
     coil_step: Annotated[float, Field(gt=0, le=1)] = 0.25
-    greatest_solid_length: Length | None = None
-    greatest_free_length: Length | None = None
-    greatest_mass: Annotated[float, _quantity("mass"), Field(gt=0)] | None = None
-    working_frequency: Annotated[float, _quantity("frequency"), Field(gt=0)] | None = None
+    greatest_solid_length: Size | None = None
+    greatest_free_length: Size | None = None
+    greatest_mass: Annotated[float, quantity("mass"), Field(gt=0)] | None = None
+    working_frequency: Annotated[float, quantity("frequency"), Field(gt=0)] | None = None

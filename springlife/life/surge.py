@@ -29,7 +29,7 @@ from springlife.spring.surge_filter import Floats
 from springlife.units import significant
 
 if TYPE_CHECKING:
-    from springlife.life.case import EventInput
+    from springlife.life.case_input import EventInput
     from springlife.life.reading import EventReading
 
 

@@ -2,26 +2,16 @@
 
 from __future__ import annotations
 
-from typing import Annotated, Any, Literal
+from typing import Annotated, Literal
 
-from pydantic import BaseModel, BeforeValidator, ConfigDict, Field, model_validator
+from pydantic import Field, model_validator
 
-from springlife.units import parse
+from springlife.life.fields import Table, quantity
 
 Damping = Annotated[float, Field(ge=1e-3, le=0.5)]  # less is remembered for thousands of waves; more is no spring
 
 
-class _Table(BaseModel):
-    """A table of the case file: no unknown keys, no silent conversions."""
-
-    model_config = ConfigDict(extra="forbid", strict=True, frozen=True, allow_inf_nan=False)
-
-
-def _amount(kind: str) -> Any:
-    return BeforeValidator(lambda text: parse(text, kind))
-
-
-class CamInput(_Table):
+class CamInput(Table):
     """One [[surge.cam]]: the lift over one turn of a cam that moves the spring's end, and the speeds to judge."""
 
     name: Annotated[str, Field(min_length=1)]
@@ -29,17 +19,17 @@ class CamInput(_Table):
     angle: str | int  # column of the cam angle, in degrees, over one whole turn
     lift: str | int  # column of the lift
     unit: str | None = None  # of the lift
-    installed_deflection: Annotated[float, _amount("length"), Field(ge=0)]  # at no lift
+    installed_deflection: Annotated[float, quantity("length"), Field(ge=0)]  # at no lift
     speeds: Annotated[list[Annotated[float, Field(gt=0)]], Field(min_length=1, max_length=1000)]  # turns a minute
 
 
-class SurgeInput(_Table):
+class SurgeInput(Table):
     """The [surge] table; what is left out comes from data/surge.toml."""
 
     damping: Damping | None = None  # ratio of the first mode
     damping_range: Annotated[list[Damping], Field(min_length=2, max_length=2)] | None = None
     positions: Annotated[int, Field(ge=2, le=500)] | None = None  # places along the wire, both ends included
-    up_to: Annotated[float, _amount("frequency"), Field(gt=0)] | None = None  # motion above is left out
+    up_to: Annotated[float, quantity("frequency"), Field(gt=0)] | None = None  # motion above is left out
     moving_ends: Literal["one", "both"] = "one"
     cam: list[CamInput] = []
 
