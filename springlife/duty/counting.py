@@ -1,298 +1,47 @@
-"""Rainflow counting (ASTM E1049-85) as an algebra: count pieces apart, add them, repeat them, exactly.
+"""Rainflow counting (ASTM E1049-85) of samples: whole, in chunks, on several cores, or with places.
 
-A ``Count`` is what counting leaves of a history: its closed cycles and the residue of turning points that have not
-closed. Joining two residues and counting on gives what the whole history gives, for any split, so records are
-counted in blocks, on several cores, and a service life is ``n * pass``. See the manual, ``manual/counting.md``.
+The answer is a ``Count``, which can be added and repeated; see ``algebra`` and the manual, ``manual/counting.md``.
 """
 
 from __future__ import annotations
 
 import math
-import operator
-from collections.abc import Mapping
-from dataclasses import dataclass, field
-from functools import cached_property
+from collections import deque
+from collections.abc import Iterator
+from concurrent.futures import Future, ThreadPoolExecutor
+from dataclasses import dataclass
 from itertools import pairwise
-from typing import TYPE_CHECKING, Any, Literal
+from typing import Any, Literal
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from springlife.duty import stack
-from springlife.duty.cycles import NONE, Cycles, CycleTable, distinct, joined, pairs, times
+from springlife.duty.algebra import Count, Residue, adjacent, between_gaps, check_residue, recurring
+from springlife.duty.cycles import CycleTable
+from springlife.duty.grid import Kept
+from springlife.duty.stack import Scratch, loops, turning
 from springlife.errors import InputError, nearest
 
-if TYPE_CHECKING:
-    import pandas as pd
+__all__ = ["Count", "CycleTable", "Located", "Tally", "count", "traced"]
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
-Residue = Literal["half", "repeat", "drop"]
 Gaps = Literal["error", "split"]
+Piece = tuple[Floats, Floats, Floats]
 
 EXACT = 2**53  # whole numbers up to here are floats
+SEGMENT = 2**19  # samples that are counted apart; 4 MB, so that workers and gaps have something to bite on
+MOST_PAIRS = 500_000  # 12 MB, and more than a million samples of noise; see the manual
 
 
-_GAP = np.array([np.nan])
-_BAGS = ("closed", "ended_half", "ended_repeat")
-
-
-def _fixed(values: Any) -> Floats:
-    array = np.array(values, dtype=np.float64)
-    array.flags.writeable = False
-    return array
-
-
-@dataclass(frozen=True, eq=False, repr=False)
-class Count:
-    """What counting leaves of a history; ``Count()`` is the empty history.
-
-    ``a + b`` is a then b, ``n * a`` is a repeated n times; both equal the count of the history written out.
-    ``==`` compares cycles, as unordered pairs with their number, and residue.
-
-    Parameters
-    ----------
-    residue : float array, shape (m,)
-        Turning points that have not closed. One NaN among them stands for all gaps: before it what precedes the
-        first gap, after it what follows the last one.
-    closed, ended_half, ended_repeat : Cycles
-        The closed cycles, and the residues of the pieces between gaps, to which nothing can be joined any more:
-        their half cycles (each 1), and their cycles when closed as a repeating history.
-    minimum, maximum : float
-        Extremes of the history, exact; NaN for the empty one.
-    samples : int
-        Number of samples, without gaps.
-    gate : float
-        Cycles with a range up to this are left out. A sum takes the larger gate of its parts.
-
-    Notes
-    -----
-    Counts form a monoid: ``+`` is associative and ``Count()`` its identity. The residue joined to itself reduces to
-    itself again, so ``n * a`` has n times the closed cycles, n - 1 times those that close at the joint, and the
-    residue of a.
-    """
-
-    residue: Floats = field(default_factory=lambda: _fixed([]))
-    closed: Cycles = NONE
-    ended_half: Cycles = NONE
-    ended_repeat: Cycles = NONE
-    minimum: float = math.nan
-    maximum: float = math.nan
-    samples: int = 0
-    gate: float = 0.0
-
-    @cached_property
-    def _distinct(self) -> Cycles:
-        return distinct(self.closed)
-
-    @property
-    def low(self) -> Floats:
-        """Lower ends of the closed cycles, one for each distinct pair, sorted."""
-        return self._distinct.low
-
-    @property
-    def high(self) -> Floats:
-        """Upper ends of the closed cycles."""
-        return self._distinct.high
-
-    @property
-    def number(self) -> Ints:
-        """How often each pair has closed."""
-        return self._distinct.number
-
-    def __add__(self, other: Count) -> Count:
-        """Return the count of this history followed by the other one."""
-        if not isinstance(other, Count):
-            return NotImplemented
-        gate = max(self.gate, other.gate)
-        (*head, tail), (start, *rest) = pieces(self.residue), pieces(other.residue)
-        closed, seam = _join(tail, start, gate)
-        half, repeat = [self.ended_half, other.ended_half], [self.ended_repeat, other.ended_repeat]
-        if head and rest:  # what lies between two gaps has ended
-            half.append(_adjacent(seam, gate))
-            repeat.append(_recurring(seam, gate))
-            seams = [head[0], rest[0]]
-        else:
-            seams = [*head, seam, *rest]
-        return Count(
-            residue=_between_gaps(seams),
-            closed=joined(self.closed, other.closed, closed, gate=gate),
-            ended_half=joined(*half, gate=gate),
-            ended_repeat=joined(*repeat, gate=gate),
-            minimum=float(np.fmin(self.minimum, other.minimum)),
-            maximum=float(np.fmax(self.maximum, other.maximum)),
-            samples=self.samples + other.samples,
-            gate=gate,
-        )
-
-    def __radd__(self, other: object) -> Count:
-        """Let ``sum`` start at 0."""
-        return self if isinstance(other, int) and other == 0 else NotImplemented
-
-    def __mul__(self, n: int) -> Count:
-        """Return the count of this history repeated ``n`` times in sequence.
-
-        Raises
-        ------
-        InputError
-            ``n`` is negative, or a pair would close more than 2**63 - 1 times.
-        """
-        try:
-            n = operator.index(n)
-        except TypeError:
-            return NotImplemented
-        if n < 0:
-            raise InputError(f"a count cannot be repeated {n} times; give a whole number from 0")
-        if n == 0:
-            return Count()
-        *head, tail = pieces(self.residue)
-        closed, seam = _join(tail, head[0] if head else tail, self.gate)
-        half, repeat = times(n, self.ended_half), times(n, self.ended_repeat)
-        if head:
-            half = joined(half, times(n - 1, _adjacent(seam, self.gate)))
-            repeat = joined(repeat, times(n - 1, _recurring(seam, self.gate)))
-        return Count(
-            residue=self.residue,
-            closed=joined(times(n, self.closed), times(n - 1, closed)),
-            ended_half=half,
-            ended_repeat=repeat,
-            minimum=self.minimum,
-            maximum=self.maximum,
-            samples=n * self.samples,
-            gate=self.gate,
-        )
-
-    __rmul__ = __mul__
-
-    def __eq__(self, other: object) -> bool:
-        """Compare cycles as unordered pairs with their number, and the residue."""
-        if not isinstance(other, Count):
-            return NotImplemented
-        return np.array_equal(self.residue, other.residue, equal_nan=True) and all(
-            distinct(mine).same(distinct(theirs))
-            for mine, theirs in (
-                (self.closed, other.closed),
-                (self.ended_half, other.ended_half),
-                (self.ended_repeat, other.ended_repeat),
-            )
-        )
-
-    __hash__ = None  # type: ignore[assignment]
-
-    def __repr__(self) -> str:
-        """Show sizes rather than arrays."""
-        span = f", {self.minimum:g} to {self.maximum:g}" if self.samples else ""
-        return f"Count({self.samples} samples{span}, {self.low.size} pairs closed, {self.residue.size} points open)"
-
-    def settled(self, residue: Residue = "half") -> CycleTable:
-        """Return the cycles that nothing joined later can change: the closed ones and pieces between gaps.
-
-        Parameters
-        ----------
-        residue : "half", "repeat", "drop"
-            How the residue of a piece between gaps is read; see ``table``.
-        """
-        return CycleTable.of((self.closed, 1.0), *self._ended(residue))
-
-    def table(self, residue: Residue = "half") -> CycleTable:
-        """Return the cycles with the residue read, one row for each distinct pair, sorted by low and high.
-
-        Parameters
-        ----------
-        residue : "half", "repeat", "drop"
-            ``"half"``: every adjacent pair is one half cycle (ASTM E1049-85 5.4.4), for a history that happens
-            once. ``"repeat"``: the history recurs, and these are the cycles that one more pass adds (5.4.5).
-            ``"drop"``: only what has closed.
-
-        Raises
-        ------
-        InputError
-            Another word for ``residue``.
-        """
-        low, high, *_ = traced(self.residue, residue)
-        kept = high - low > self.gate
-        rows = pairs(low[kept], high[kept])
-        weight = 0.5 if residue == "half" else 1.0
-        return CycleTable.of((self.closed, 1.0), *self._ended(residue), (rows, weight))
-
-    def _ended(self, residue: Residue) -> list[tuple[Cycles, float]]:
-        _check_residue(residue)
-        return {"half": [(self.ended_half, 0.5)], "repeat": [(self.ended_repeat, 1.0)], "drop": []}[residue]
-
-    def cycles(self, residue: Residue = "half") -> pd.DataFrame:
-        """Return ``table`` as a DataFrame with columns low, high, range, mean, count; a half cycle counts 0.5."""
-        import pandas as pd
-
-        t = self.table(residue)
-        mean = t.low + (t.high - t.low) / 2
-        return pd.DataFrame({"low": t.low, "high": t.high, "range": t.high - t.low, "mean": mean, "count": t.count})
-
-    def mapped(self, scale: float, offset: float = 0.0) -> Count:
-        """Return the count of ``scale * x + offset``; a negative scale turns the history over.
-
-        Raises
-        ------
-        InputError
-            A scale or offset that is not finite.
-        """
-        if not (math.isfinite(scale) and math.isfinite(offset)):
-            raise InputError(f"scale {scale!r} and offset {offset!r} must be finite numbers")
-        gate = abs(scale) * self.gate
-        # Rounding can make neighbours equal, so the residue goes through the stack again.
-        again = [_join(_fixed([]), scale * piece + offset, gate) for piece in pieces(self.residue)]
-        ends = sorted((scale * self.minimum + offset, scale * self.maximum + offset))
-        return Count(
-            residue=_between_gaps([points for _, points in again]),
-            closed=joined(self.closed.mapped(scale, offset), *(closed for closed, _ in again)),
-            ended_half=self.ended_half.mapped(scale, offset),
-            ended_repeat=self.ended_repeat.mapped(scale, offset),
-            minimum=ends[0],
-            maximum=ends[1],
-            samples=self.samples,
-            gate=gate,
-        )
-
-    def to_dict(self) -> dict[str, Any]:
-        """Give the count for JSON; ``from_dict`` returns it exactly."""
-        return {
-            "gate": self.gate,
-            "samples": self.samples,
-            "minimum": self.minimum if self.samples else None,
-            "maximum": self.maximum if self.samples else None,
-            "residue": [piece.tolist() for piece in pieces(self.residue)],
-            **{
-                name: {"low": bag.low.tolist(), "high": bag.high.tolist(), "number": bag.number.tolist()}
-                for name in _BAGS
-                for bag in [distinct(getattr(self, name))]
-            },
-        }
-
-    @classmethod
-    def from_dict(cls, given: Mapping[str, Any]) -> Count:
-        """Return the count that ``to_dict`` gave.
-
-        Raises
-        ------
-        InputError
-            A key is missing, or its value is none that a count gives.
-        """
-        try:
-            bags = {name: Cycles(**_arrays(given[name])) for name in _BAGS}
-            return cls(
-                residue=_between_gaps([np.array(piece, dtype=np.float64) for piece in given["residue"]]),
-                minimum=math.nan if given["minimum"] is None else float(given["minimum"]),
-                maximum=math.nan if given["maximum"] is None else float(given["maximum"]),
-                samples=operator.index(given["samples"]),
-                gate=float(given["gate"]),
-                **bags,
-            )
-        except KeyError as error:
-            raise InputError(f"count: key {error} is missing; give what to_dict returned") from error
-        except (TypeError, ValueError, OverflowError) as error:
-            raise InputError(f"count: {error}; give what to_dict returned") from error
-
-
-def count(samples: ArrayLike, *, gate: float = 0.0, nan: Gaps = "error") -> Count:
+def count(
+    samples: ArrayLike,
+    *,
+    gate: float = 0.0,
+    nan: Gaps = "error",
+    most_pairs: int = MOST_PAIRS,
+    workers: int = 1,
+) -> Count:
     """Count the rainflow cycles of a history.
 
     Parameters
@@ -301,9 +50,14 @@ def count(samples: ArrayLike, *, gate: float = 0.0, nan: Gaps = "error") -> Coun
         Whole numbers are exact up to 2**53 and refused beyond.
     gate : float
         Cycles with a range up to this are left out, after counting, so that pieces still add up exactly. It is not
-        the hysteresis filter of the trade, which smooths the samples before counting and shifts what remains.
+        the hysteresis filter of the trade, which drops small reversals before counting and may so shorten or join
+        the larger cycles around them.
     nan : "error", "split"
         With ``"split"`` a NaN ends a piece: what precedes it is never joined to what follows.
+    most_pairs : int
+        Distinct pairs of low and high that are kept exactly. With more, cycles go to cells; see ``Count.exact``.
+    workers : int
+        Threads that count; the answer is the same for any number.
 
     Returns
     -------
@@ -318,29 +72,63 @@ def count(samples: ArrayLike, *, gate: float = 0.0, nan: Gaps = "error") -> Coun
     ----------
     ASTM E1049-85 (2017), 5.4.4.
     """
-    tally = Tally(gate=gate, nan=nan)
+    tally = Tally(gate=gate, nan=nan, most_pairs=most_pairs, workers=workers)
     tally.feed(samples)
     return tally.result()
 
 
+@dataclass(frozen=True)
+class Located:
+    """A closed cycle and the positions of its ends, counted from the first sample fed, gaps included."""
+
+    low: float
+    high: float
+    index_low: int
+    index_high: int
+
+
 class Tally:
-    """Count a history that comes in chunks.
+    """Count a history that comes in chunks, in flat memory.
 
     Parameters
     ----------
-    gate, nan
+    gate, nan, most_pairs, workers
         See ``count``.
+    where : bool
+        Follow positions too: ``largest`` and ``positions`` are then known. Takes several times as long.
     """
 
-    def __init__(self, *, gate: float = 0.0, nan: Gaps = "error") -> None:
+    def __init__(
+        self,
+        *,
+        gate: float = 0.0,
+        nan: Gaps = "error",
+        most_pairs: int = MOST_PAIRS,
+        workers: int = 1,
+        where: bool = False,
+    ) -> None:
         """Start with nothing counted."""
         if not (math.isfinite(gate) and gate >= 0):
             raise InputError(f"gate is {gate!r}; give a range of 0 or more, in the unit of the samples")
         if nan not in ("error", "split"):
             raise InputError(f"nan is {nan!r}; {nearest(nan, ('error', 'split'))}")
-        self._total = Count(gate=gate)
-        self._split = nan == "split"
-        self._seen = 0
+        for name, value in (("most_pairs", most_pairs), ("workers", workers)):
+            if value < 1:
+                raise InputError(f"{name} is {value!r}; give 1 or more")
+        self._gate, self._split, self._most, self._workers = gate, nan == "split", most_pairs, workers
+        self._closed, self._half, self._repeat = (Kept(most_pairs, gate) for _ in range(3))
+        self._head: Floats | None = None  # residue of what preceded the first gap
+        self._stack, self._top = np.empty(64), 0
+        self._minimum, self._maximum = math.inf, -math.inf
+        self._fed = self._samples = 0
+        self._scratch = [Scratch() for _ in range(workers + 1 if workers > 1 else 1)]
+        self._places = np.empty(0, dtype=np.int64) if where else None
+        self.largest: Located | None = None
+
+    @property
+    def positions(self) -> Ints | None:
+        """Positions of the points that are still open, when asked to follow them."""
+        return self._places
 
     def feed(self, chunk: ArrayLike) -> None:
         """Count the next samples.
@@ -350,25 +138,110 @@ class Tally:
         InputError
             See ``count``; the index counts from the first chunk's first sample.
         """
-        values = _numbers(chunk)
-        gaps = self._gaps(values)
-        for number, piece in enumerate(np.split(values, gaps)):
-            if number:
-                self._total += Count(residue=_GAP, gate=self._total.gate)
-                piece = piece[1:]
-            self._total += _piece(piece, self._total.gate)
-        self._seen += values.size
+        values = _row(chunk)
+        run = loops(self._fed + values.size)
+        for segment, piece in self._reduced(run, values):
+            if piece is None:
+                self._feed_gapped(run, segment)
+            elif self._places is not None:
+                self._follow(run, segment, self._fed)
+            else:
+                self._append(run, *piece)
+                self._samples += segment.size
+            self._fed += segment.size
 
-    def _gaps(self, values: Floats) -> NDArray[np.intp]:
-        odd = np.flatnonzero(~np.isfinite(values))
-        for i in odd[:1] if not self._split else odd[np.isinf(values[odd])][:1]:
-            remedy = "mend it" if self._split or np.isinf(values[i]) else 'mend it, or count with nan="split"'
-            raise InputError(f"sample {self._seen + i} is {values[i]}, which cannot be counted; {remedy}")
-        return odd
+    def _reduced(self, run: Any, values: NDArray[Any]) -> Iterator[tuple[Floats, Piece | None]]:
+        """Count segments apart, in order: one after the other, or by threads that run ahead."""
+        starts = range(0, values.size, SEGMENT)
+        segments = (_floats(values[i : i + SEGMENT], self._fed) for i in starts)
+        if self._workers == 1 or len(starts) == 1:
+            yield from ((segment, run.reduce(segment, self._scratch[0])) for segment in segments)
+            return
+        ahead: deque[tuple[Floats, Future[Piece | None]]] = deque()
+        with ThreadPoolExecutor(self._workers) as pool:
+            for number, segment in enumerate(segments):
+                if len(ahead) == self._workers:  # the scratch of the oldest is in use until it has been taken in
+                    oldest, piece = ahead.popleft()
+                    yield oldest, piece.result()
+                scratch = self._scratch[number % len(self._scratch)]
+                ahead.append((segment, pool.submit(run.reduce, segment, scratch)))
+            for oldest, piece in ahead:
+                yield oldest, piece.result()
+
+    def _append(self, run: Any, low: Floats, high: Floats, points: Floats) -> None:
+        """Join a piece to what is open."""
+        self._closed.add(low, high)
+        self._make_room(points.size)
+        low, high, self._top = run.push(self._stack, self._top, points)
+        self._closed.add(low, high)
+        self._minimum = min(self._minimum, float(points.min()))
+        self._maximum = max(self._maximum, float(points.max()))
+
+    def _make_room(self, more: int) -> None:
+        if self._top + more > self._stack.size:
+            self._stack = np.concatenate([self._stack[: self._top], np.empty(self._top + more)])
+
+    def _feed_gapped(self, run: Any, segment: Floats) -> None:
+        """Count the pieces of a segment that has gaps."""
+        _check_finite(segment, self._fed, self._split)
+        gaps = [-1, *np.flatnonzero(np.isnan(segment)).tolist(), segment.size]
+        for number, (before, gap) in enumerate(pairwise(gaps)):
+            if number:
+                self._end_piece()
+            piece = segment[before + 1 : gap]
+            if not piece.size:
+                continue
+            if self._places is not None:
+                self._follow(run, piece, self._fed + before + 1)
+            else:
+                self._append(run, *run.reduce(piece, self._scratch[0]))
+                self._samples += piece.size
+
+    def _end_piece(self) -> None:
+        points = self._stack[: self._top].copy()
+        if self._head is None:
+            self._head = points
+        else:
+            half, repeat = adjacent(points), recurring(points)
+            self._half.add(half.low, half.high)
+            self._repeat.add(repeat.low, repeat.high)
+        self._top = 0
+        if self._places is not None:
+            self._places = self._places[:0]
+
+    def _follow(self, run: Any, piece: Floats, start: int) -> None:
+        """Count a piece with the positions of its samples, the first of which is ``start``."""
+        assert self._places is not None
+        turns = turning(piece)
+        values = np.concatenate([self._stack[: self._top], piece[turns]])
+        places = np.concatenate([self._places, turns + start])
+        low, high, rest = run.trace(values, np.arange(values.size))
+        self._closed.add(values[low], values[high])
+        span = values[high] - values[low]
+        if span.size and (self.largest is None or span.max() > self.largest.high - self.largest.low):
+            i, j = low[span.argmax()], high[span.argmax()]
+            self.largest = Located(float(values[i]), float(values[j]), int(places[i]), int(places[j]))
+        self._top, self._places = 0, places[rest]
+        self._make_room(rest.size)
+        self._stack[: rest.size], self._top = values[rest], rest.size
+        self._minimum = min(self._minimum, float(piece.min()))
+        self._maximum = max(self._maximum, float(piece.max()))
+        self._samples += piece.size
 
     def result(self) -> Count:
         """Return the count of everything fed so far."""
-        return self._total
+        points = self._stack[: self._top].copy()
+        return Count(
+            residue=between_gaps([points] if self._head is None else [self._head, points]),
+            closed=self._closed.result(),
+            ended_half=self._half.result(),
+            ended_repeat=self._repeat.result(),
+            minimum=self._minimum if self._samples else math.nan,
+            maximum=self._maximum if self._samples else math.nan,
+            samples=self._samples,
+            gate=self._gate,
+            most_pairs=self._most,
+        )
 
 
 def traced(points: ArrayLike, residue: Residue = "half") -> tuple[Floats, Floats, Floats, Ints, Ints]:
@@ -393,91 +266,37 @@ def traced(points: ArrayLike, residue: Residue = "half") -> tuple[Floats, Floats
     InputError
         See ``count``.
     """
-    _check_residue(residue)
-    values = _numbers(points)
-    if np.isinf(values).any():
-        i = int(np.flatnonzero(np.isinf(values))[0])
-        raise InputError(f"sample {i} is {values[i]}, which cannot be counted; mend it")
-    seen = values.tolist()
+    check_residue(residue)
+    row = _row(points)
+    values = _floats(row, 0)
+    _check_finite(values, 0, split=True)
+    run = loops(values.size)
     gaps = [-1, *np.flatnonzero(np.isnan(values)).tolist(), values.size]
-    rows: list[tuple[list[int], list[int]]] = []
+    closed: list[tuple[Ints, Ints]] = []
 
-    def follow(order: list[int]) -> list[int]:
-        low, high, rest = stack.trace(seen, order)
-        rows.append((low, high))
-        return rest
+    def follow(order: Ints) -> Ints:
+        low, high, rest = run.trace(values, order)
+        closed.append((low, high))
+        return rest  # type: ignore[no-any-return]
 
-    rests = [follow(list(range(a + 1, b))) for a, b in pairwise(gaps)]
+    rests = [follow(turning(values[a + 1 : b]) + a + 1) for a, b in pairwise(gaps)]
     if residue == "repeat":
-        first, *middle, last = rests if len(rests) > 1 else [[], *rests]
-        for rest in (*middle, follow(last + first)):
-            follow(rest + rest)
-    index = [np.array([i for row in rows for i in row[end]], dtype=np.int64) for end in (0, 1)]
-    number = np.ones(index[0].size)
+        first, *middle, last = rests if len(rests) > 1 else [rests[0][:0], *rests]
+        for rest in (*middle, follow(np.concatenate([last, first]))):
+            follow(np.concatenate([rest, rest]))
+    low, high = (np.concatenate([row[end] for row in closed]) for end in (0, 1))
+    number = np.ones(low.size)
     if residue == "half":
-        begin = np.array([i for rest in rests for i in rest[:-1]], dtype=np.int64)
-        end = np.array([i for rest in rests for i in rest[1:]], dtype=np.int64)
+        begin, end = (np.concatenate([rest[k : rest.size - 1 + k] for rest in rests]) for k in (0, 1))
         up = values[begin] < values[end]
-        index = [
-            np.concatenate([index[0], np.where(up, begin, end)]),
-            np.concatenate([index[1], np.where(up, end, begin)]),
-        ]
+        low = np.concatenate([low, np.where(up, begin, end)])
+        high = np.concatenate([high, np.where(up, end, begin)])
         number = np.concatenate([number, np.full(begin.size, 0.5)])
-    return values[index[0]], values[index[1]], number, index[0], index[1]
+    return values[low], values[high], number, low, high
 
 
-def pieces(residue: Floats) -> list[Floats]:
-    """Return the turning points before the first and after the last gap, or all of them when there is none."""
-    gaps = np.flatnonzero(np.isnan(residue))
-    return [residue[: gaps[0]], residue[gaps[-1] + 1 :]] if gaps.size else [residue]
-
-
-def _between_gaps(parts: list[Floats]) -> Floats:
-    return _fixed(parts[0] if len(parts) == 1 else np.concatenate([parts[0], _GAP, parts[-1]]))
-
-
-def _piece(values: Floats, gate: float) -> Count:
-    """Count a history without gaps."""
-    if not values.size:
-        return Count(gate=gate)
-    closed, points = _join(_GAP[:0], values, gate)
-    return Count(
-        residue=points,
-        closed=closed,
-        minimum=float(points.min()),
-        maximum=float(points.max()),
-        samples=values.size,
-        gate=gate,
-    )
-
-
-def _join(first: Floats, then: Floats, gate: float) -> tuple[Cycles, Floats]:
-    """Count on from a residue: what closes, and the residue after it."""
-    points: list[float] = first.tolist()
-    low: list[float] = []
-    high: list[float] = []
-    stack.push(points, then.tolist(), low, high)
-    return joined(pairs(np.array(low), np.array(high)), gate=gate), _fixed(points)
-
-
-def _adjacent(points: Floats, gate: float) -> Cycles:
-    """Return the half cycles of a residue."""
-    low, high = np.minimum(points[:-1], points[1:]), np.maximum(points[:-1], points[1:])
-    return joined(pairs(low, high), gate=gate)
-
-
-def _recurring(points: Floats, gate: float) -> Cycles:
-    """Return the cycles of a residue that recurs: what closes when it follows itself."""
-    return _join(points, points, gate)[0]
-
-
-def _check_residue(residue: str) -> None:
-    if residue not in ("half", "repeat", "drop"):
-        raise InputError(f"residue is {residue!r}; {nearest(residue, ('half', 'repeat', 'drop'))}")
-
-
-def _numbers(samples: ArrayLike) -> Floats:
-    """Return samples as float64, exactly, or say why not."""
+def _row(samples: ArrayLike) -> NDArray[Any]:
+    """Return samples as one row of numbers of their own type, or say why not."""
     if np.ma.is_masked(samples):
         raise InputError('samples are masked in places; fill those with NaN and count with nan="split"')
     try:
@@ -491,22 +310,28 @@ def _numbers(samples: ArrayLike) -> Floats:
     kind = array.dtype
     if kind.kind not in "iuf" or kind.itemsize > 8:
         raise InputError(f"samples are of type {kind}; give integers or floats of up to 64 bits")
-    if (kind.kind in "iu" and kind.itemsize == 8) or not isinstance(samples, np.ndarray):
-        _check_exact(samples, array)
-    return array.astype(np.float64, copy=False)
+    if kind.kind == "f" and isinstance(samples, (list, tuple)):  # whole numbers among floats have become floats
+        for i in np.flatnonzero(np.abs(array) >= EXACT):
+            if isinstance(samples[i], int):
+                _check_whole(samples[i], int(i))
+    return array
 
 
-def _check_exact(samples: ArrayLike, array: NDArray[Any]) -> None:
-    """Refuse whole numbers that a float cannot hold, also those that a list mixes with floats."""
-    for i in np.flatnonzero((array > EXACT) | (array < -EXACT)):
-        value = samples[i] if isinstance(samples, (list, tuple)) else array[i]
-        if isinstance(value, (int, np.integer)):
-            raise InputError(f"sample {i} is {value}; whole numbers are counted exactly up to 2**53 only")
+def _floats(values: NDArray[Any], start: int) -> Floats:
+    """Return a segment as contiguous float64, exactly."""
+    if values.dtype.kind in "iu" and values.dtype.itemsize == 8:
+        for i in np.flatnonzero((values > EXACT) | (values < -EXACT))[:1]:
+            _check_whole(values[i], start + int(i))
+    return np.ascontiguousarray(values, dtype=np.float64)
 
 
-def _arrays(given: Mapping[str, Any]) -> dict[str, Any]:
-    low, high = (np.array(given[name], dtype=np.float64) for name in ("low", "high"))
-    number = np.array(given["number"], dtype=np.int64)
-    if not (low.ndim == 1 and low.shape == high.shape == number.shape and (low < high).all() and (number > 0).all()):
-        raise InputError("count: low, high and number do not make cycles; give what to_dict returned")
-    return {"low": low, "high": high, "number": number}
+def _check_whole(value: int, i: int) -> None:
+    if abs(int(value)) > EXACT:
+        raise InputError(f"sample {i} is {value}; whole numbers are counted exactly up to 2**53 only")
+
+
+def _check_finite(values: Floats, start: int, split: bool) -> None:
+    odd = np.isinf(values) if split else ~np.isfinite(values)
+    for i in np.flatnonzero(odd)[:1]:
+        remedy = "mend it" if np.isinf(values[i]) else 'mend it, or count with nan="split"'
+        raise InputError(f"sample {start + i} is {values[i]}, which cannot be counted; {remedy}")

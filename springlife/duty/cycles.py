@@ -1,12 +1,13 @@
-"""Bags of cycles: pairs of a lower and an upper end, each with how often it occurs."""
+"""Bags of cycles: pairs of a lower and an upper end, each with how often it occurs; in cells when too many differ."""
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
+from springlife.duty.stack import groups
 from springlife.errors import InputError
 
 Floats = NDArray[np.float64]
@@ -14,18 +15,21 @@ Ints = NDArray[np.int64]
 Bools = NDArray[np.bool_]
 
 MOST = 2**63 - 1  # int64
+SIDE = 256  # cells across the range
 
 
 @dataclass(frozen=True, eq=False)
 class Cycles:
     """Cycles as unordered pairs: ``low``, ``high`` (float64) and ``number`` (int64), all of shape (n,), read-only.
 
-    A pair may stand in several rows; ``distinct`` makes them one.
+    A pair may stand in several rows; ``distinct`` makes them one. ``cell`` is 0 when every pair is exact; else the
+    rows are the means of what lay in cells of that side.
     """
 
     low: Floats
     high: Floats
     number: Ints
+    cell: float = 0.0
 
     def __post_init__(self) -> None:
         """Nobody writes into a bag that others may share."""
@@ -45,14 +49,16 @@ class Cycles:
 
     def where(self, kept: Bools) -> Cycles:
         """Return the rows where ``kept`` is true."""
-        return self if kept.all() else Cycles(self.low[kept], self.high[kept], self.number[kept])
+        if kept.all():
+            return self
+        return replace(self, low=self.low[kept], high=self.high[kept], number=self.number[kept])
 
     def mapped(self, scale: float, offset: float) -> Cycles:
         """Return the cycles of ``scale * x + offset``; those that rounding leaves without a range drop out."""
         low, high = scale * self.low + offset, scale * self.high + offset
         if scale < 0:
             low, high = high, low
-        return Cycles(low, high, self.number.copy()).where(high > low)
+        return Cycles(low, high, self.number, abs(scale) * self.cell).where(high > low)
 
 
 @dataclass(frozen=True, eq=False)
@@ -72,32 +78,44 @@ class CycleTable:
         low = np.concatenate([bag.low for bag, _ in parts])
         high = np.concatenate([bag.high for bag, _ in parts])
         count = np.concatenate([bag.number * weight for bag, weight in parts])
-        if low.size == 0:
-            return cls(low, high, count)
-        order, starts = _groups(low, high)
-        low, high = low[order][starts], high[order][starts]
-        return cls(low, high, np.add.reduceat(count[order], starts))
+        by, starts = groups(low, high)
+        return cls(low[by][starts] + 0.0, high[by][starts] + 0.0, _sums(count[by], starts))
 
 
 def pairs(low: Floats, high: Floats) -> Cycles:
     """Return cycles that occur once each."""
-    return Cycles(low, high, np.ones(low.size, dtype=np.int64))
+    return Cycles(low, high, np.broadcast_to(np.int64(1), low.size))
 
 
 NONE = pairs(np.empty(0), np.empty(0))
 
 
-def joined(*bags: Cycles, gate: float = 0.0) -> Cycles:
-    """Put bags together, leaving out cycles with a range up to ``gate``."""
+def joined(*bags: Cycles, gate: float = 0.0, most: int = MOST) -> Cycles:
+    """Put bags together.
+
+    Parameters
+    ----------
+    gate : float
+        Cycles with a range up to this are left out.
+    most : int
+        More distinct pairs than this are folded into cells; so is everything once a bag has cells.
+    """
     filled = [bag for bag in bags if len(bag)]
     if not filled:
         return NONE
-    whole = filled[0] if len(filled) == 1 else Cycles(
-        np.concatenate([bag.low for bag in filled]),
-        np.concatenate([bag.high for bag in filled]),
-        np.concatenate([bag.number for bag in filled]),
-    )  # fmt: skip
-    return whole.where(whole.high - whole.low > gate)
+    whole = filled[0]
+    if len(filled) > 1:
+        whole = Cycles(
+            np.concatenate([bag.low for bag in filled]),
+            np.concatenate([bag.high for bag in filled]),
+            np.concatenate([bag.number for bag in filled]),
+            max(bag.cell for bag in filled),
+        )
+    if gate:
+        whole = whole.where(whole.high - whole.low > gate)
+    if not whole.cell and len(whole) > most:
+        whole = distinct(whole)
+    return folded(whole) if (whole.cell and len(filled) > 1) or len(whole) > most else whole
 
 
 def times(n: int, bag: Cycles) -> Cycles:
@@ -113,7 +131,7 @@ def times(n: int, bag: Cycles) -> Cycles:
     most = n * int(bag.number.max())
     if most > MOST:
         raise InputError(f"{n} repeats make {most} cycles of one pair; at most 2**63 - 1 can be counted")
-    return Cycles(bag.low, bag.high, n * bag.number)
+    return Cycles(bag.low, bag.high, n * bag.number, bag.cell)
 
 
 def distinct(bag: Cycles) -> Cycles:
@@ -124,21 +142,56 @@ def distinct(bag: Cycles) -> Cycles:
     InputError
         A pair occurs more than 2**63 - 1 times.
     """
-    if not len(bag):
-        return NONE
-    order, starts = _groups(bag.low, bag.high)
-    low, high, number = bag.low[order], bag.high[order], bag.number[order]
+    by, starts = groups(bag.low, bag.high)
+    number = _whole_sums(bag.number[by], starts)
+    return Cycles(bag.low[by][starts] + 0.0, bag.high[by][starts] + 0.0, number, bag.cell)
+
+
+def width(low: float, high: float, side: int) -> float:
+    """Return the least power of two of which at most ``side`` cells, from multiples of it, cover a range."""
+    found = 2.0 ** np.floor(np.log2(high / side - low / side))
+    while np.floor(high / found) - np.floor(low / found) >= side:
+        found *= 2
+    return float(found)
+
+
+def folded(bag: Cycles) -> Cycles:
+    """Fold rows into the cells of low and high that hold them; the cycle of the largest range stays as it is."""
+    bag = distinct(bag)
+    span = bag.high - bag.low
+    largest = np.flatnonzero(span == span.max())[-1]
+    cell = max(width(bag.low[0], bag.high.max(), SIDE), 2.0 ** np.ceil(np.log2(bag.cell)) if bag.cell else 0.0)
+    rest = np.delete(np.arange(len(bag)), largest)
+    low, high, number = bag.low[rest], bag.high[rest], bag.number[rest]
+    by, starts = groups(np.floor(low / cell), np.floor(high / cell))
+    low, high, number = low[by], high[by], number[by]
+    sums = _whole_sums(number, starts)
+
+    def means(end: Floats) -> Floats:
+        first = end[starts]  # the mean is taken from the first row, so that a row alone stays exactly as it is
+        above = end - np.repeat(first, np.diff(np.append(starts, end.size)))
+        return first + _sums(above * number, starts) / sums
+
+    return distinct(
+        Cycles(
+            np.append(means(low), bag.low[largest]),
+            np.append(means(high), bag.high[largest]),
+            np.append(sums, bag.number[largest]),
+            cell,
+        )
+    )
+
+
+def _sums(values: Floats, starts: NDArray[np.intp]) -> Floats:
+    return np.add.reduceat(values, starts) if starts.size else np.empty(0)
+
+
+def _whole_sums(number: Ints, starts: NDArray[np.intp]) -> Ints:
+    if not starts.size:
+        return np.empty(0, dtype=np.int64)
     if number.sum(dtype=np.float64) < 2**62:
-        return Cycles(low[starts], high[starts], np.add.reduceat(number, starts))
+        return np.add.reduceat(number, starts)
     exact = np.add.reduceat(number.astype(object), starts)
     if exact.max() > MOST:
         raise InputError(f"one pair makes {exact.max()} cycles; at most 2**63 - 1 can be counted")
-    return Cycles(low[starts], high[starts], exact.astype(np.int64))
-
-
-def _groups(low: Floats, high: Floats) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
-    """Return the order by low and high, and where each distinct pair starts in it."""
-    order = np.lexsort((high, low))
-    new = np.ones(order.size, dtype=np.bool_)
-    new[1:] = (np.diff(low[order]) > 0) | (np.diff(high[order]) != 0)
-    return order, np.flatnonzero(new)
+    return exact.astype(np.int64)

@@ -1,33 +1,168 @@
-"""The rainflow stack itself, on turning points.
+"""The rainflow stack: the loops of counting in NumPy and plain Python, and the choice of the compiled ones.
 
 With X, Y, Z three successive ranges, Y is closed when ``Y <= X and Y <= Z``, decided by comparing the four values
 rather than by subtracting them. What stays, the residue, then grows strictly, swings through the extremes, and
-shrinks strictly. Every adjacent pair of it is one half cycle of ASTM E1049-85 5.4.4.
+shrinks strictly. Every adjacent pair of it is one half cycle of ASTM E1049-85 5.4.4. Pairs may close in any order:
+the cycles, as unordered pairs, and the residue are always the same.
 """
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+import sys
+from types import ModuleType
 
 import numpy as np
 from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
+Bools = NDArray[np.bool_]
+
+# Measured; see the manual.
+WORTH_LOADING = 40_000_000  # samples from which loading the compiled loops (0.8 s) is repaid
+WORTH_CALLING = 2_000  # and from which they are used once loaded
+BLOCK = 32_768  # samples of which all intermediate arrays stay in cache
+PASS_COST, PASS_COST_PER_PEAK = 50, 0.01  # of a pass, in cycles that the plain stack closes in the same time
+
+_COMPILED = "springlife.duty.kernels"
+_failed = False
 
 
-def push(stack: list[float], points: Sequence[float], low: list[float], high: list[float]) -> None:
-    """Put samples on the stack one after the other; cycles that close go to ``low`` and ``high``."""
-    for d in points:
-        if stack:
-            last = stack[-1]
+def loops(samples: int) -> ModuleType:
+    """Return the module whose loops suit a record of this many samples: the compiled ones, or this one.
+
+    Loading the compiler takes longer than counting a short record without it, and it may not be there at all.
+    """
+    global _failed
+    if samples >= (WORTH_CALLING if _COMPILED in sys.modules else WORTH_LOADING) and not _failed:
+        try:
+            from springlife.duty import kernels
+        except ImportError:
+            _failed = True
+        else:
+            return kernels
+    return sys.modules[__name__]
+
+
+class Scratch:
+    """Room for the answer of one ``reduce``, used again for the next piece."""
+
+    def __init__(self) -> None:
+        """Start empty."""
+        self._size = -1
+
+    def fit(self, samples: int) -> tuple[Floats, Floats, Floats]:
+        """Return arrays for the lows and highs that so many samples can close, and for the points they leave."""
+        if samples > self._size:
+            self._size = samples
+            self._arrays = np.empty(samples // 2 + 2), np.empty(samples // 2 + 2), np.empty(samples + 1)
+        return self._arrays
+
+
+def turning(x: Floats) -> Ints:
+    """Return the positions of the turning points, ends included; on a plateau, its first sample."""
+    places = None
+    if (x[1:] == x[:-1]).any():
+        places = np.flatnonzero(np.concatenate([[True], x[1:] != x[:-1]]))
+        x = x[places]
+    turns = np.ones(x.size, dtype=np.bool_)
+    up = x[1:] > x[:-1]
+    turns[1:-1] = up[1:] != up[:-1]
+    found = np.flatnonzero(turns)
+    return found if places is None else places[found]
+
+
+def reduce(x: Floats, scratch: Scratch | None = None) -> tuple[Floats, Floats, Floats] | None:
+    """Count a piece apart, as far as it goes without the stack.
+
+    Parameters
+    ----------
+    x : float array, shape (n,), n > 0
+    scratch : Scratch
+        Where compiled loops put their answer.
+
+    Returns
+    -------
+    low, high, points : float arrays
+        Closed cycles, and alternating points to be pushed; None when a sample is not finite.
+    """
+    if not np.isfinite(x).all():
+        return None
+    blocks = (x[i : i + BLOCK] for i in range(0, x.size, BLOCK))
+    points = np.concatenate([block[turning(block)] for block in blocks])
+    return _peel(points[turning(points)])
+
+
+def _peel(points: Floats) -> tuple[Floats, Floats, Floats]:
+    """Close the pairs that both neighbours span, pass by pass while it pays.
+
+    With valleys V and peaks P in turn (V0 P0 V1 P1 ...), the fall from P[i] to V[i + 1] is spanned when the next peak
+    is higher and the last valley was not, the rise from V[i] to P[i] when the next valley is lower and the last
+    peak was not. No point can be in two such pairs.
+    """
+    falls = points.size > 1 and points[0] > points[1]
+    valleys = np.concatenate([[np.inf], points[1::2]]) if falls else points[0::2]  # inf spans nothing
+    peaks = points[0::2] if falls else points[1::2]
+    low, high = [np.empty(0)], [np.empty(0)]
+    while peaks.size > 1:
+        higher, lifted = peaks[1:] > peaks[:-1], valleys[1:] >= valleys[:-1]
+        n, m = higher.size, lifted.size - 1
+        fall, rise = np.zeros(peaks.size, dtype=np.bool_), np.zeros(peaks.size, dtype=np.bool_)
+        np.logical_and(higher, lifted[:n], out=fall[:n])
+        np.logical_not(higher[:m] | lifted[1:], out=rise[1 : m + 1])
+        closed = fall | rise
+        at = np.flatnonzero(closed)
+        if at.size < PASS_COST + peaks.size * PASS_COST_PER_PEAK:
+            break
+        high.append(peaks[at])
+        low.append(valleys[at + fall[at]])
+        stays = np.ones(valleys.size, dtype=np.bool_)
+        stays[1 : n + 1] ^= fall[:n]
+        stays[1 : m + 1] ^= rise[1 : m + 1]
+        peaks, valleys = peaks[~closed], valleys[stays]
+    rest = np.empty(valleys.size + peaks.size)
+    rest[0::2], rest[1::2] = valleys, peaks
+    return np.concatenate(low), np.concatenate(high), rest[1:] if falls else rest
+
+
+def push(stack: Floats, top: int, points: Floats) -> tuple[Floats, Floats, int]:
+    """Count on from a residue.
+
+    Parameters
+    ----------
+    stack : float array
+        The residue is ``stack[:top]``; there is room for the points behind it.
+    points : float array
+        Further samples.
+
+    Returns
+    -------
+    low, high : float arrays
+        The cycles that close.
+    top : int
+        The new size of the residue, which is in place.
+    """
+    low: list[float] = []
+    high: list[float] = []
+    # Only the end of the residue moves: take as much of it as the points reach back, in growing steps.
+    base = max(0, top - 64)
+    seam: list[float] = stack[base:top].tolist()
+    for d in points.tolist():
+        if seam:
+            last = seam[-1]
             if d == last:
                 continue
-            if len(stack) > 1 and (last > stack[-2]) == (d > last):
-                stack.pop()  # the last point did not turn
-        stack.append(d)
-        while len(stack) > 3:
-            a, b, c = stack[-4:-1]
+            if len(seam) > 1 and (last > seam[-2]) == (d > last):
+                seam.pop()  # the last point did not turn
+        seam.append(d)
+        while True:
+            if len(seam) < 4:
+                if not base:
+                    break
+                reach = max(0, base - 4 * (top - base))
+                seam[:0] = stack[reach:base].tolist()
+                base = reach
+            a, b, c = seam[-4:-1]
             if a < b:
                 if c < a or d < b:
                     break
@@ -38,29 +173,96 @@ def push(stack: list[float], points: Sequence[float], low: list[float], high: li
                     break
                 low.append(b)
                 high.append(c)
-            del stack[-3:-1]
+            del seam[-3:-1]
+    stack[base : base + len(seam)] = seam
+    return np.array(low), np.array(high), base + len(seam)
 
 
-def trace(values: Sequence[float], order: Sequence[int]) -> tuple[list[int], list[int], list[int]]:
-    """Do the same on positions in ``values``, taken in ``order``: those of lows, highs and residue."""
-    stack: list[int] = []
+def trace(values: Floats, order: Ints) -> tuple[Ints, Ints, Ints]:
+    """Count positions instead of values, in one go.
+
+    Parameters
+    ----------
+    values : float array, shape (n,)
+    order : int array, shape (m,)
+        Positions in ``values`` in the order in which they happen.
+
+    Returns
+    -------
+    low, high, rest : int arrays
+        Positions of the ends of closed cycles, and of the residue.
+    """
+    x: list[float] = values[order].tolist()
     low: list[int] = []
     high: list[int] = []
-    for i in order:
-        d = values[i]
+    stack: list[int] = []
+    for i, d in enumerate(x):
         if stack:
-            last = values[stack[-1]]
+            last = x[stack[-1]]
             if d == last:
                 continue
-            if len(stack) > 1 and (last > values[stack[-2]]) == (d > last):
+            if len(stack) > 1 and (last > x[stack[-2]]) == (d > last):
                 stack.pop()
         stack.append(i)
         while len(stack) > 3:
-            a, b, c = (values[j] for j in stack[-4:-1])
-            rising = a < b
-            if (c < a or d < b) if rising else (c > a or d > b):
+            a, b, c = x[stack[-4]], x[stack[-3]], x[stack[-2]]
+            up = a < b
+            if (c < a or d < b) if up else (c > a or d > b):
                 break
-            low.append(stack[-2] if rising else stack[-3])
-            high.append(stack[-3] if rising else stack[-2])
+            low.append(stack[-2 if up else -3])
+            high.append(stack[-3 if up else -2])
             del stack[-3:-1]
-    return low, high, stack
+    return order[low], order[high], order[stack]
+
+
+def order(low: Floats, high: Floats) -> NDArray[np.intp]:
+    """Return the order of pairs by low and then high."""
+    found = np.argsort(low)
+    first = low[found]
+    if (first[1:] > first[:-1]).all():
+        return found
+    found = np.argsort(high)
+    return found[np.argsort(low[found], kind="stable")]
+
+
+def groups(low: Floats, high: Floats) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
+    """Return the order of pairs by low and high, and where each distinct pair starts in it."""
+    by = order(low, high)
+    new = np.ones(by.size, dtype=np.bool_)
+    new[1:] = (np.diff(low[by]) != 0) | (np.diff(high[by]) != 0)
+    return by, np.flatnonzero(new)
+
+
+def group(low: Floats, high: Floats, number: Ints, most: int) -> tuple[Floats, Floats, Ints] | None:
+    """Join equal pairs and add up their numbers, in any order; None when there are more than ``most`` pairs."""
+    by, starts = groups(low, high)
+    if starts.size > most:
+        return None
+    return low[by][starts] + 0.0, high[by][starts] + 0.0, np.add.reduceat(number[by], starts)  # -0.0 is 0.0
+
+
+def fold(low: Floats, high: Floats, number: Ints, width: float, first: float, fine: float, cells: Ints) -> None:
+    """Add cycles to cells.
+
+    Parameters
+    ----------
+    low, high, number : arrays, shape (n,)
+    width : float
+        Of a cell; a power of two, so that dividing by it is exact.
+    first : float
+        Number of the first cell, whose lower edge is ``first * width``.
+    fine : float
+        Steps in a cell, a power of two.
+    cells : int array, shape (side, side, 3)
+        By cells of low and high: cycles, and the sums of the whole steps of low and high above the cells' edges.
+        Sums of whole numbers come out alike in any order.
+    """
+    a, b = low / width, high / width
+    i, j = np.floor(a), np.floor(b)
+    side = cells.shape[0]
+    place = ((i - first) * side + (j - first)).astype(np.int64)
+    flat = cells.reshape(-1, 3)
+    # bincount adds floats; an int64 sum of many repeats may not fit them
+    np.add.at(flat[:, 0], place, number)
+    np.add.at(flat[:, 1], place, number * ((a - i) * fine).astype(np.int64))
+    np.add.at(flat[:, 2], place, number * ((b - j) * fine).astype(np.int64))

@@ -1,0 +1,159 @@
+"""Flat memory for closed cycles: exact while few pairs are distinct, in cells of low and high when many.
+
+A cell keeps how many cycles it holds and their mean low and high. Its width is a power of two and its edges are
+multiples of it, so when the range grows, two cells become one and nothing else changes: which cells there are
+depends on the cycles alone, not on the order in which they came.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from springlife.duty.cycles import NONE, SIDE, Cycles, joined, pairs, width
+from springlife.duty.stack import loops
+
+Floats = NDArray[np.float64]
+Ints = NDArray[np.int64]
+
+FINE = 2.0**20  # steps in a cell in which means are kept: sums of whole numbers are the same in any order
+FINEST = 2.0**24  # 2**63 / FINEST: cycles that a cell can hold after its range has grown
+
+
+class Kept:
+    """The closed cycles of a stream.
+
+    Parameters
+    ----------
+    most : int
+        Distinct pairs that are kept exactly.
+    gate : float
+        Cycles with a range up to this are left out.
+    """
+
+    def __init__(self, most: int, gate: float) -> None:
+        """Start with nothing."""
+        self._most, self._gate = most, gate
+        self._rows = NONE  # distinct pairs
+        self._low, self._high, self._size = np.empty(0), np.empty(0), 0  # what came since, as it came
+        self._grid: Grid | None = None
+
+    def add(self, low: Floats, high: Floats) -> None:
+        """Add cycles; the arrays may be used again afterwards."""
+        if self._gate:
+            kept = high - low > self._gate
+            low, high = low[kept], high[kept]
+        if not low.size:
+            return
+        if self._grid:
+            self._grid.add(pairs(low, high))
+            return
+        self._make_room(low.size)
+        there = slice(self._size, self._size + low.size)
+        self._low[there], self._high[there] = low, high
+        self._size += low.size
+        if self._size > self._most:
+            self._settle()
+
+    def _make_room(self, more: int) -> None:
+        if self._size + more > self._low.size:
+            room = 2 * self._size + more
+            for name in ("_low", "_high"):
+                wider = np.empty(room)
+                wider[: self._size] = getattr(self, name)[: self._size]
+                setattr(self, name, wider)
+
+    def _fresh(self) -> Cycles:
+        return pairs(self._low[: self._size], self._high[: self._size])
+
+    def _settle(self) -> None:
+        """Join equal pairs, or go over to cells."""
+        bag = joined(self._rows, self._fresh())
+        rows = loops(len(bag)).group(bag.low, bag.high, bag.number, self._most)
+        if rows is None:
+            self._grid = Grid(bag)
+        self._rows = Cycles(*rows) if rows else NONE
+        self._size = 0
+
+    def result(self) -> Cycles:
+        """Return what has been added."""
+        if not self._grid and len(self._rows) + self._size > self._most:
+            self._settle()
+        if self._grid:
+            return self._grid.cycles()
+        given = joined(self._rows, self._fresh())
+        self._low, self._high = self._low[: self._size], self._high[: self._size]
+        return given
+
+
+class Grid:
+    """Cells of low and high, with the cycle of the largest range kept exactly beside them."""
+
+    def __init__(self, bag: Cycles) -> None:
+        """Start with some cycles; their range sets the steps in which means are kept."""
+        self._lowest, self._highest = bag.low.min(), bag.high.max()
+        self._width = width(self._lowest, self._highest, SIDE)
+        self._first = np.floor(self._lowest / self._width)
+        self._step = self._width / FINE
+        self._cells = np.zeros((SIDE, SIDE, 3), dtype=np.int64)
+        self._largest = (0.0, 0.0)
+        self._times = 0
+        self.add(bag)
+
+    def add(self, bag: Cycles) -> None:
+        """Add cycles."""
+        self._cover(bag.low.min(), bag.high.max())
+        self._remember(bag)
+        self._fold(bag.low, bag.high, bag.number, self._cells)
+
+    def _cover(self, low: float, high: float) -> None:
+        """Make room for a wider range."""
+        if low >= self._lowest and high <= self._highest:
+            return
+        self._lowest, self._highest = min(low, self._lowest), max(high, self._highest)
+        was, first, old = self._width, self._first, self._cells
+        self._width = max(was, width(self._lowest, self._highest, SIDE))
+        self._first = np.floor(self._lowest / self._width)
+        i, j = np.nonzero(old[:, :, 0])
+        moved = old[i, j]
+        if self._width / self._step > FINEST:
+            coarser = int(self._width / self._step / FINEST)
+            self._step *= coarser
+            moved[:, 1:] //= coarser
+        self._cells = np.zeros_like(old)
+        places = []
+        for axis, k in enumerate((i, j), start=1):
+            edge = (first + k) * was
+            place = np.floor(edge / self._width)
+            moved[:, axis] += moved[:, 0] * ((edge - place * self._width) / self._step).astype(np.int64)
+            places.append((place - self._first).astype(np.int64))
+        np.add.at(self._cells, (places[0], places[1]), moved)
+
+    def _remember(self, bag: Cycles) -> None:
+        """Keep the cycle of the largest range; of several, the one with the highest ends."""
+        span = bag.high - bag.low
+        most = span.max()
+        if most < self._largest[1] - self._largest[0]:
+            return
+        at = np.flatnonzero(span == most)
+        k = at[np.argmax(bag.low[at])]
+        low, high = float(bag.low[k]), float(bag.high[k])
+        if (most, low) > (self._largest[1] - self._largest[0], self._largest[0]):
+            self._largest, self._times = (low, high), 0
+        same = (bag.low == self._largest[0]) & (bag.high == self._largest[1])
+        self._times += int(bag.number[same].sum())
+
+    def cycles(self) -> Cycles:
+        """Return one row for each cell that holds cycles, and one for the largest cycle."""
+        cells, (lowest, highest) = self._cells.copy(), (np.array([end]) for end in self._largest)
+        self._fold(lowest, highest, np.array([-self._times]), cells)
+        i, j = np.nonzero(cells[:, :, 0])
+        number, low_steps, high_steps = cells[i, j].T
+        low = (self._first + i) * self._width + (low_steps / number + 0.5) * self._step
+        high = (self._first + j) * self._width + (high_steps / number + 0.5) * self._step
+        high = np.maximum(high, np.nextafter(low, np.inf))  # ranges under a step still are cycles
+        return Cycles(np.append(low, lowest), np.append(high, highest), np.append(number, self._times), self._width)
+
+    def _fold(self, low: Floats, high: Floats, number: Ints, cells: Ints) -> None:
+        fine = self._width / self._step
+        loops(low.size).fold(low, high, number, self._width, self._first, fine, cells)

@@ -1,0 +1,295 @@
+"""The loops of ``stack`` compiled, same names, same answers; loaded only when the record is long enough to pay for it.
+
+Samples go through in blocks that stay in the innermost cache. In a block the turning points are compacted without
+branches, then cycles between wider neighbours are taken out pass by pass, again without branches, as long as a
+pass pays; only what is left goes over the stack, whose branches no processor can predict.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import Any
+
+import numba
+import numpy as np
+from numpy.typing import NDArray
+
+from springlife.duty.stack import Scratch
+
+Floats = NDArray[np.float64]
+Ints = NDArray[np.int64]
+
+BLOCK = 4096  # samples: 32 kB of turning points; 1,024 to 8,192 differ by a few per cent
+PAYS = np.uint64(4)  # a pass is repeated while it takes out more than one point in four
+
+_numba: Any = numba  # partly typed, and signatures are not
+_floats, _ints, _places, _cells = _numba.float64[::1], _numba.int64[::1], _numba.int32[::1], _numba.int64[:, :, ::1]
+_given, _whole = (_numba.types.Array(of, 1, "C", readonly=True) for of in (_numba.float64, _numba.int64))
+_sizes = _numba.types.UniTuple(_numba.int64, 2)
+
+
+def _compiled(*signature: Any) -> Callable[[Any], Any]:
+    def compile_(function: Any) -> Any:
+        try:
+            return _numba.njit(*signature, nogil=True, cache=True)(function)
+        except RuntimeError:  # no place to write the cache to
+            return _numba.njit(*signature, nogil=True)(function)
+
+    return compile_
+
+
+# Counters that index arrays are unsigned: a signed one costs a test for negative indices at every access.
+_zero, _one, _two, _three = (np.uint64(i) for i in range(4))
+
+
+@_compiled()
+def _turns(x, start, end, last, rising, out):  # type: ignore[no-untyped-def]
+    """Compact the turning points of x[start:end] into ``out``; ``last`` came before and was reached ``rising``."""
+    n, was, before, level = _zero, rising, last, False
+    for i in range(start, end):
+        v = x[i]
+        up = v > before
+        level |= v == before
+        out[n] = before
+        n += np.uint64(up != was)
+        was, before = up, v
+    if not level:
+        return n, before, was
+    m, before = _one, last  # plateaus: first drop what repeats
+    out[_zero] = last
+    for i in range(start, end):
+        v = x[i]
+        out[m] = v
+        m += np.uint64(v != before)
+        before = v
+    n, was, before = _zero, rising, last
+    for i in range(_one, m):
+        v = out[i]
+        up = v > before
+        out[n] = before
+        n += np.uint64(up != was)
+        was, before = up, v
+    return n, before, was
+
+
+@_compiled()
+def _peel(p, n, peak, low, high, m):  # type: ignore[no-untyped-def]
+    """Close every pair of p[:n] that its neighbours span, the right one strictly, so that no two pairs touch.
+
+    ``peak`` tells whether p[0] is one. Returns how many points are left, in place, and the cycles so far.
+    """
+    if n < 5:
+        return n, m
+    i, kept, was = _one, _one, False
+    a, b, c = p[0], p[1], p[2]
+    if peak:  # one step, so that b is a peak below
+        was = (c <= a) & (p[3] < b)
+        low[m], high[m] = b, c
+        m += np.uint64(was)
+        kept += np.uint64(not was)
+        i, a, b, c = _two, b, c, p[3]
+    lifted = c >= a
+    while i + _three < n:
+        d, e = p[i + _two], p[i + _three]
+        higher = d > b
+        fall = higher & lifted
+        low[m], high[m] = c, b
+        m += np.uint64(fall)
+        p[kept] = b
+        kept += np.uint64(not (fall | was))
+        lifted = e >= c
+        was = not (higher | lifted)  # the rise from c to d
+        low[m], high[m] = c, d
+        m += np.uint64(was)
+        p[kept] = c
+        kept += np.uint64(not (was | fall))
+        b, c = d, e
+        i += _two
+    p[kept] = b
+    kept += np.uint64(not was)
+    i += _one
+    while i < n:
+        p[kept] = p[i]
+        kept += _one
+        i += _one
+    return kept, m
+
+
+@_compiled()
+def _stack(p, n, peak, s, t, low, high, m):  # type: ignore[no-untyped-def]
+    """Put the alternating points p[:n] on the stack s[:t], below which they turn."""
+    for i in range(n):
+        v = p[i]
+        if peak:
+            while t > _two and s[t - _one] >= s[t - _three] and v >= s[t - _two]:
+                low[m], high[m] = s[t - _one], s[t - _two]
+                m += _one
+                t -= _two
+        else:
+            while t > _two and s[t - _one] <= s[t - _three] and v <= s[t - _two]:
+                low[m], high[m] = s[t - _two], s[t - _one]
+                m += _one
+                t -= _two
+        s[t] = v
+        t += _one
+        peak = not peak
+    return t, m
+
+
+@_compiled(_sizes(_given, _floats, _floats, _floats))
+def _reduce(x, low, high, s):  # type: ignore[no-untyped-def]
+    size, out = x.size, np.empty(BLOCK + 2)
+    m, t, i = _zero, _one, 1
+    while i < size and x[i] == x[0]:
+        i += 1
+    s[0] = x[0]
+    if i == size:
+        return np.int64(0), np.int64(1 if np.isfinite(x[0]) else -1)
+    rising, last = x[i] > x[0], x[i]
+    finite = np.isfinite(x[0]) & np.isfinite(last)
+    i += 1
+    while i < size and finite:
+        end = min(size, i + BLOCK)
+        for j in range(i, end):
+            finite &= x[j] - x[j] == 0.0
+        peak = rising
+        n, last, rising = _turns(x, i, end, last, rising, out)
+        before = n + n
+        while PAYS * (before - n) > before:
+            before = n
+            n, m = _peel(out, n, peak, low, high, m)
+        t, m = _stack(out, n, peak, s, t, low, high, m)
+        i = end
+    out[0] = last
+    t, m = _stack(out, _one, rising, s, t, low, high, m)
+    return np.int64(m), np.int64(t) if finite else np.int64(-1)
+
+
+def reduce(x: Floats, scratch: Scratch) -> tuple[Floats, Floats, Floats] | None:
+    """Count a piece apart; see ``stack.reduce``. The answer lies in ``scratch``."""
+    low, high, points = scratch.fit(x.size)
+    m, t = _reduce(x, low, high, points)
+    return None if t < 0 else (low[:m], high[:m], points[:t])
+
+
+@_compiled(_sizes(_floats, _numba.int64, _given, _floats, _floats))
+def _push(s, top, points, low, high):  # type: ignore[no-untyped-def]
+    t, m, one = np.uint64(top), _zero, np.empty(1)
+    for i in range(points.size):
+        v = points[i]
+        if t > _zero:
+            if v == s[t - _one]:
+                continue
+            rising = v > s[t - _one]
+            if t > _one and (s[t - _one] > s[t - _two]) == rising:
+                t -= _one
+            one[0] = v
+            t, m = _stack(one, _one, rising, s, t, low, high, m)
+        else:
+            s[0] = v
+            t = _one
+    return np.int64(t), np.int64(m)
+
+
+def push(stack: Floats, top: int, points: Floats) -> tuple[Floats, Floats, int]:
+    """Count on from the residue ``stack[:top]``; see ``stack.push``."""
+    room = (top + points.size) // 2 + 1
+    low, high = np.empty(room), np.empty(room)
+    t, m = _push(stack, top, points, low, high)
+    return low[:m], high[:m], t
+
+
+@_compiled(_sizes(_given, _whole, _ints, _ints, _ints))
+def _trace(x, order, low, high, s):  # type: ignore[no-untyped-def]
+    t, m = 0, 0
+    for i in order:
+        v = x[i]
+        if t and v == x[s[t - 1]]:
+            continue
+        if t > 1 and (x[s[t - 1]] > x[s[t - 2]]) == (v > x[s[t - 1]]):
+            t -= 1
+        while t > 2:
+            a, b, c = x[s[t - 3]], x[s[t - 2]], x[s[t - 1]]
+            if a < b:
+                if c < a or v < b:
+                    break
+                low[m], high[m] = s[t - 1], s[t - 2]
+            else:
+                if c > a or v > b:
+                    break
+                low[m], high[m] = s[t - 2], s[t - 1]
+            m += 1
+            t -= 2
+        s[t] = i
+        t += 1
+    return m, t
+
+
+def trace(values: Floats, order: Ints) -> tuple[Ints, Ints, Ints]:
+    """Count positions; see ``stack.trace``."""
+    room = order.size // 2 + 1
+    low, high, rest = np.empty(room, np.int64), np.empty(room, np.int64), np.empty(order.size, np.int64)
+    m, t = _trace(values, order, low, high, rest)
+    return low[:m], high[:m], rest[:t]
+
+
+def _dense(number: Ints) -> Ints:
+    """Return the number that all share, or all numbers."""
+    return number[:1] if number.strides == (0,) else number
+
+
+@_compiled(_numba.int64(_given, _given, _whole, _places, _floats, _floats, _ints))
+def _group(low, high, number, places, rows_low, rows_high, rows_number):  # type: ignore[no-untyped-def]
+    """Hash table with open addressing: ``places`` holds row numbers, -1 where free."""
+    each = 1 if number.size == low.size else 0
+    used, mask = 0, np.uint64(places.size - 1)
+    mix = np.uint64(0x9E3779B97F4A7C15)  # 2**64 over the golden ratio: spreads neighbouring bit patterns
+    one = np.empty(2)
+    bits = one.view(np.uint64)
+    for i in range(low.size):
+        a, b = low[i] + 0.0, high[i] + 0.0  # -0.0 is 0.0
+        one[0], one[1] = a, b
+        key = (bits[0] * mix ^ bits[1]) * mix
+        place = ((key ^ key >> np.uint64(32)) * mix >> np.uint64(32)) & mask
+        while places[place] >= 0:
+            row = places[place]
+            if rows_low[row] == a and rows_high[row] == b:
+                break
+            place = (place + _one) & mask
+        row = places[place]
+        if row < 0:
+            if used == rows_low.size:
+                return -1
+            row = used
+            places[place] = row
+            rows_low[row], rows_high[row], rows_number[row] = a, b, 0
+            used += 1
+        rows_number[row] += number[each * i]
+    return used
+
+
+def group(low: Floats, high: Floats, number: Ints, most: int) -> tuple[Floats, Floats, Ints] | None:
+    """Join equal pairs; see ``stack.group``."""
+    room = min(most, low.size)
+    places = np.full(1 << (2 * room).bit_length(), -1, dtype=np.int32)
+    rows = np.empty(room), np.empty(room), np.empty(room, dtype=np.int64)
+    used = _group(low, high, _dense(number), places, *rows)
+    return None if used < 0 else (rows[0][:used], rows[1][:used], rows[2][:used])
+
+
+@_compiled(_numba.void(_given, _given, _whole, _numba.float64, _numba.float64, _numba.float64, _cells))
+def _fold(low, high, number, per_cell, first, fine, cells):  # type: ignore[no-untyped-def]
+    each = 1 if number.size == low.size else 0  # 0: one number for all
+    for r in range(low.size):
+        a, b = low[r] * per_cell, high[r] * per_cell
+        i, j = np.floor(a), np.floor(b)
+        cell = cells[np.uint64(i - first), np.uint64(j - first)]
+        n = number[each * r]
+        cell[_zero] += n
+        cell[_one] += n * np.int64((a - i) * fine)
+        cell[_two] += n * np.int64((b - j) * fine)
+
+
+def fold(low: Floats, high: Floats, number: Ints, width: float, first: float, fine: float, cells: Ints) -> None:
+    """Add cycles to cells; see ``stack.fold``."""
+    _fold(low, high, _dense(number), 1 / width, first, fine, cells)
