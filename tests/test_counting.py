@@ -14,7 +14,9 @@ import rainflow
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from springlife.duty.counting import Count, CycleTable, Tally, count, traced
+from springlife.duty import counting
+from springlife.duty.algebra import pieces
+from springlife.duty.counting import Count, CycleTable, Located, Tally, count, traced
 from springlife.errors import InputError
 
 Classes = dict[tuple[float, float], float]
@@ -422,3 +424,78 @@ class TestTally:
         tally.feed([1, 2, 3])
         with pytest.raises(InputError, match="sample 4 is nan"):
             tally.feed([1, float("nan")])
+
+    @given(TestGaps.gapped, st.integers(1, 3), st.data())
+    def test_gaps_and_workers_and_segments(self, history, workers, data):
+        cut = data.draw(st.integers(0, len(history)))
+        with pytest.MonkeyPatch.context() as patch:
+            patch.setattr(counting, "SEGMENT", 5)
+            tally = Tally(nan="split", workers=workers)
+            tally.feed(history[:cut])
+            tally.feed(history[cut:])
+        assert same(tally.result(), count(history, nan="split"))
+
+    @given(TestGaps.gapped, st.data())
+    def test_the_largest_closed_cycle_keeps_its_place(self, history, data):
+        cut = data.draw(st.integers(0, len(history)))
+        tally = Tally(nan="split", where=True)
+        tally.feed(history[:cut])
+        tally.feed(history[cut:])
+        assert same(tally.result(), count(history, nan="split"))
+        low, high, *_ = traced(history, "drop")
+        found = tally.largest
+        if not low.size:
+            assert found is None
+        else:
+            assert found.high - found.low == (high - low).max()
+            assert (history[found.index_low], history[found.index_high]) == (found.low, found.high)
+        open_points = [history[i] for i in tally.positions]
+        assert open_points == pieces(tally.result().residue)[-1].tolist()
+
+    def test_places_of_the_standards_example(self):
+        tally = Tally(where=True)
+        for sample in STANDARD:
+            tally.feed([sample])
+        # by hand: -1 to 3 is the one closed cycle; -1 and 3 turn no open range
+        assert tally.largest == Located(low=-1, high=3, index_low=4, index_high=5)
+        assert tally.positions.tolist() == [0, 1, 2, 3, 6, 7, 8]
+
+    def test_a_faulty_whole_number_is_found_behind_the_first_segment(self, monkeypatch):
+        monkeypatch.setattr(counting, "SEGMENT", 4)
+        samples = np.arange(10)
+        samples[9] = 2**60
+        with pytest.raises(InputError, match="sample 9 is 1152921504606846976"):
+            count(samples)
+
+    def test_a_read_only_map_of_small_integers_is_counted_as_it_lies(self, tmp_path):
+        samples = np.random.default_rng(2).integers(-2000, 2000, 50_000).astype("<i2")
+        samples.tofile(tmp_path / "record.bin")
+        mapped = np.memmap(tmp_path / "record.bin", dtype="<i2", mode="r")
+        assert same(count(mapped), count(samples.tolist()))
+
+    @pytest.mark.parametrize("argument", ["workers", "most_pairs"])
+    def test_sizes_are_checked(self, argument):
+        with pytest.raises(InputError, match=f"{argument} is 0; give 1 or more"):
+            count(STANDARD, **{argument: 0})
+
+
+class TestDeepResidues:
+    """A residue as long as the history, reached back into from its end."""
+
+    depth = 3000
+    converging = [(-1) ** i * (3000 - i) for i in range(3000)]
+
+    def test_a_wide_swing_closes_everything(self):
+        # by hand: from the third point on, each pair closes; the first two points stay
+        found = count([*self.converging, self.depth + 1, 0])
+        assert found.residue.tolist() == [self.depth, 1 - self.depth, self.depth + 1, 0]
+        assert found.low.size == found.number.sum() == self.depth // 2 - 1
+
+    @settings(max_examples=20)
+    @given(st.integers(0, 3000))
+    def test_joined_at_any_depth(self, level):
+        later = [level, -level, level // 2]
+        assert same(count(self.converging) + count(later), count(self.converging + later))
+
+    def test_repeats(self):
+        assert same(3 * count(self.converging), count(self.converging * 3))

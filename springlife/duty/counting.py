@@ -30,8 +30,8 @@ Gaps = Literal["error", "split"]
 Piece = tuple[Floats, Floats, Floats]
 
 EXACT = 2**53  # whole numbers up to here are floats
-SEGMENT = 2**19  # samples that are counted apart; 4 MB, so that workers and gaps have something to bite on
-MOST_PAIRS = 500_000  # 12 MB, and more than a million samples of noise; see the manual
+SEGMENT = 2**18  # samples that are counted apart: 2 MB, and enough that what is done once a segment does not show
+MOST_PAIRS = 250_000  # 6 MB, and 700,000 samples of noise; see the manual
 
 
 def count(
@@ -142,18 +142,22 @@ class Tally:
         run = loops(self._fed + values.size)
         for segment, piece in self._reduced(run, values):
             if piece is None:
-                self._feed_gapped(run, segment)
-            elif self._places is not None:
-                self._follow(run, segment, self._fed)
+                self._feed_between_gaps(run, segment)
             else:
                 self._append(run, *piece)
                 self._samples += segment.size
             self._fed += segment.size
 
     def _reduced(self, run: Any, values: NDArray[Any]) -> Iterator[tuple[Floats, Piece | None]]:
-        """Count segments apart, in order: one after the other, or by threads that run ahead."""
+        """Count segments apart, in order; None where there are gaps or positions to follow.
+
+        Threads run ahead, but segments and the order in which they are joined are the same for any number of them.
+        """
         starts = range(0, values.size, SEGMENT)
         segments = (_floats(values[i : i + SEGMENT], self._fed) for i in starts)
+        if self._places is not None:
+            yield from ((segment, None) for segment in segments)
+            return
         if self._workers == 1 or len(starts) == 1:
             yield from ((segment, run.reduce(segment, self._scratch[0])) for segment in segments)
             return
@@ -181,8 +185,8 @@ class Tally:
         if self._top + more > self._stack.size:
             self._stack = np.concatenate([self._stack[: self._top], np.empty(self._top + more)])
 
-    def _feed_gapped(self, run: Any, segment: Floats) -> None:
-        """Count the pieces of a segment that has gaps."""
+    def _feed_between_gaps(self, run: Any, segment: Floats) -> None:
+        """Count the pieces of a segment one by one."""
         _check_finite(segment, self._fed, self._split)
         gaps = [-1, *np.flatnonzero(np.isnan(segment)).tolist(), segment.size]
         for number, (before, gap) in enumerate(pairwise(gaps)):
@@ -194,7 +198,7 @@ class Tally:
             if self._places is not None:
                 self._follow(run, piece, self._fed + before + 1)
             else:
-                self._append(run, *run.reduce(piece, self._scratch[0]))
+                self._append(run, *run.reduce(piece, self._scratch[-1]))  # the one that no thread has
                 self._samples += piece.size
 
     def _end_piece(self) -> None:

@@ -15,7 +15,7 @@ Ints = NDArray[np.int64]
 Bools = NDArray[np.bool_]
 
 MOST = 2**63 - 1  # int64
-SIDE = 256  # cells across the range
+SIDE = 512  # at most so many cells across the range, and more than half as many
 
 
 @dataclass(frozen=True, eq=False)

@@ -1,0 +1,172 @@
+"""The compiled loops and those in NumPy and plain Python answer alike, on the forms that each finds hard."""
+
+from __future__ import annotations
+
+import builtins
+import sys
+from collections import Counter
+
+import numpy as np
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
+from springlife.duty import counting, kernels, stack
+from springlife.duty.counting import Tally, count, traced
+
+BOTH = pytest.mark.parametrize("loops", [stack, kernels], ids=["plain", "compiled"])
+TIME = np.arange(6000)
+NOISE = np.random.default_rng(7).normal(size=TIME.size)
+WAVE = np.sin(TIME / 3)
+FORMS = {
+    "noise": NOISE,
+    "random walk": np.cumsum(NOISE),
+    "few levels": np.round(NOISE),
+    "held samples": np.repeat(NOISE[:2000], 3),
+    "constant amplitude": np.tile([0.0, 1.0], 3000),
+    "converging": WAVE * (1 - TIME / 1e4),
+    "diverging": WAVE * (1 + TIME / 1e4),
+    "there and back": np.concatenate([WAVE * (1 - TIME / 1e4), WAVE * (1 - TIME[::-1] / 1e4)]),
+    "coarse wave": np.round(20 * WAVE * (1 + 0.3 * np.sin(TIME / 400))),
+    "ramp": TIME.astype(float),
+    "constant": np.zeros(5000),
+    "one sample": np.array([3.0]),
+    "one step": np.array([3.0, 3.0, 1.0]),
+}
+histories = st.lists(st.integers(0, 5), min_size=1, max_size=40).map(lambda x: np.array(x, dtype=float))
+
+
+def answer(loops, parts):
+    """Closed pairs with their number, and residue, of a history in parts."""
+    residue, top, scratch = np.empty(1 + sum(part.size for part in parts)), 0, stack.Scratch()
+    pairs: Counter = Counter()
+    for part in parts:
+        low, high, points = loops.reduce(part, scratch)
+        pairs.update(zip(low.tolist(), high.tolist(), strict=True))
+        low, high, top = loops.push(residue, top, points.copy())
+        pairs.update(zip(low.tolist(), high.tolist(), strict=True))
+    return pairs, residue[:top].tolist()
+
+
+@BOTH
+@pytest.mark.parametrize("form", FORMS)
+def test_a_piece_counted_apart_gives_what_the_plain_stack_gives(loops, form):
+    x = FORMS[form]
+    residue = np.empty(x.size)
+    low, high, top = stack.push(residue, 0, x)  # one sample after the other, nothing taken out before
+    expected = Counter(zip(low.tolist(), high.tolist(), strict=True)), residue[:top].tolist()
+    assert answer(loops, [x]) == expected
+    assert answer(loops, [part for part in np.split(x, [1, 7, 2500]) if part.size]) == expected
+
+
+@given(histories, histories)
+def test_both_agree_on_short_histories(a, b):
+    assert answer(kernels, [a, b]) == answer(stack, [a, b])
+
+
+@BOTH
+def test_blocks_do_not_show(loops, monkeypatch):
+    monkeypatch.setattr(stack, "BLOCK", 16)
+    x = FORMS["few levels"]
+    assert answer(loops, [x]) == answer(kernels, [x[:3000], x[3000:]])
+
+
+@BOTH
+@pytest.mark.parametrize("place", [0, 1, 2, 4000, 5999])
+@pytest.mark.parametrize("odd", [np.nan, np.inf, -np.inf])
+def test_a_sample_that_is_not_finite_is_noticed(loops, place, odd):
+    x = NOISE.copy()
+    x[place] = odd
+    assert loops.reduce(x, stack.Scratch()) is None
+    assert loops.reduce(np.full(9, odd), stack.Scratch()) is None
+
+
+@BOTH
+@pytest.mark.parametrize("form", FORMS)
+def test_positions_belong_to_the_values(loops, form):
+    x = FORMS[form]
+    low, high, rest = loops.trace(x, stack.turning(x))
+    pairs = Counter(zip(x[low].tolist(), x[high].tolist(), strict=True))
+    assert (pairs, x[rest].tolist()) == answer(stack, [x])
+
+
+@given(histories)
+def test_both_find_the_same_positions(x):
+    for plain, compiled in zip(stack.trace(x, np.arange(x.size)), kernels.trace(x, np.arange(x.size)), strict=True):
+        assert plain.tolist() == compiled.tolist()
+
+
+pairs_with_numbers = st.lists(
+    st.tuples(st.integers(0, 3), st.integers(4, 6), st.integers(1, 2**40)), min_size=1, max_size=50
+)
+
+
+@given(pairs_with_numbers, st.integers(1, 12))
+def test_both_join_the_same_pairs(rows, most):
+    low, high, number = (np.array(column) for column in zip(*rows, strict=True))
+    expected: Counter = Counter()
+    for a, b, n in rows:
+        expected[a, b] += n
+    for loops in (stack, kernels):
+        found = loops.group(low.astype(float), high.astype(float), number, most)
+        if len(expected) > most:
+            assert found is None
+        else:
+            assert {(a, b): n for a, b, n in zip(*(x.tolist() for x in found), strict=True)} == expected
+
+
+@BOTH
+def test_the_two_zeros_are_one_value(loops):
+    low, _, number = loops.group(np.array([-0.0, 0.0]), np.array([1.0, 1.0]), np.array([1, 1]), 5)
+    assert (low.tolist(), number.tolist()) == ([0.0], [2]) and not np.signbit(low[0])
+
+
+def test_both_fill_the_same_cells():
+    rng = np.random.default_rng(3)
+    low = rng.normal(size=1000)
+    high = low + rng.random(1000)
+    for number in (rng.integers(1, 2**30, 1000), np.broadcast_to(np.int64(1), 1000)):
+        cells = [np.zeros((64, 64, 3), dtype=np.int64) for _ in range(2)]
+        for loops, into in zip((stack, kernels), cells, strict=True):
+            loops.fold(low, high, number, 0.25, -32.0, 2.0**20, into)
+        assert np.array_equal(*cells)
+        assert cells[0][:, :, 0].sum() == number.sum()
+
+
+class TestChoice:
+    def test_short_records_do_not_load_the_compiler(self, monkeypatch):
+        monkeypatch.delitem(sys.modules, "springlife.duty.kernels")
+        assert stack.loops(stack.WORTH_LOADING - 1) is stack
+        assert stack.loops(stack.WORTH_LOADING) is not stack
+
+    def test_a_compiler_already_loaded_is_used(self):
+        assert stack.loops(stack.WORTH_CALLING) is kernels
+        assert stack.loops(10) is stack
+
+    def test_without_a_compiler_numpy_counts(self, monkeypatch):
+        real = builtins.__import__
+
+        def refuse(name, *args, **kwargs):
+            if name.startswith("numba") or "kernels" in (args[2] or () if len(args) > 2 else ()):
+                raise ImportError("no compiler here")
+            return real(name, *args, **kwargs)
+
+        monkeypatch.setattr(stack, "_failed", False)
+        monkeypatch.delitem(sys.modules, "springlife.duty.kernels")
+        monkeypatch.setattr(builtins, "__import__", refuse)
+        assert stack.loops(10**9) is stack
+        assert stack.loops(10**9) is stack  # and is not asked for again
+
+
+@pytest.mark.parametrize("form", FORMS)
+def test_a_count_does_not_depend_on_its_loops_or_its_workers(form, monkeypatch):
+    monkeypatch.setattr(counting, "SEGMENT", 700)
+    x = FORMS[form]
+    wanted = count(x)
+    places = traced(x, "half")
+    located = Tally(where=True)
+    located.feed(x)
+    assert count(x, workers=2) == count(x, workers=5) == located.result() == wanted
+    monkeypatch.setattr(counting, "loops", lambda samples: stack)
+    assert count(x) == count(x, workers=2) == wanted
+    assert all(np.array_equal(a, b) for a, b in zip(traced(x, "half"), places, strict=True))
