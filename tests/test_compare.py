@@ -122,6 +122,15 @@ def test_an_option_that_cannot_exist_is_withheld_and_the_rest_stands(tmp_path: P
     assert result.options[-1].best_for == ()
 
 
+def test_a_record_that_is_not_what_it_is_taken_for_withholds_every_option(tmp_path: Path) -> None:
+    event = 'record = "work.csv"\nchannel = "y"\nunit = "mm"'
+    case = QUIET.replace('blocks = [{ low = "5 mm", high = "20 mm", cycles = 100 }]', event)
+    lengths = "y\n" + "\n".join(["50", "35", "48", "36", "50"] * 20) + "\n"
+    result = compare(load_case(write_case(tmp_path, case, lengths)))
+    assert {option.assessment.verdict for option in result.options} == {"withheld"}
+    assert all("swapped-signal" in {f.code for f in option.assessment.findings} for option in result.options)
+
+
 def test_nothing_to_compare_when_the_drawn_spring_cannot_be_read(tmp_path: Path) -> None:
     with pytest.raises(InputError, match="nothing to compare"):
         compared(tmp_path, "", case=QUIET.replace('"16 mm"', '"1.5 mm"'))

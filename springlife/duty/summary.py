@@ -44,6 +44,7 @@ class RecordSummary:
     longest_at_minimum: int
     longest_at_maximum: int
     drift: float | None
+    drift_z: float | None  # Kendall's test of a trend in the minima: past 3 is no chance
     gaps: int
     repeated_times: int
 
@@ -172,6 +173,7 @@ class SummaryAccumulator:
         """Return the summary of everything fed."""
         recording = self.recording
         steps = np.diff(self._levels)
+        drift, drift_z = self._drift()
         return RecordSummary(
             samples=self._samples,
             span_s=recording.span if recording else None,
@@ -188,15 +190,19 @@ class SummaryAccumulator:
             levels=None if self._fine else self._levels.size,
             longest_at_minimum=self._low.longest,
             longest_at_maximum=self._high.longest,
-            drift=self._drift(),
+            drift=drift,
+            drift_z=drift_z,
             gaps=recording.gaps_found if recording else 0,
             repeated_times=recording.repeated_times if recording else 0,
         )
 
-    def _drift(self) -> float | None:
-        """Median of the slopes between all pairs of window minima, times the length of the record."""
-        if len(self._minima) < WINDOWS // 2:
-            return None
+    def _drift(self) -> tuple[float | None, float | None]:
+        """Median of the slopes between all pairs of window minima times the record's length, and Kendall's z."""
+        n = len(self._minima)
+        if n < WINDOWS // 2:
+            return None, None
         minima = np.array(self._minima)
-        i, j = np.triu_indices(minima.size, 1)
-        return float(np.median((minima[j] - minima[i]) / (j - i)) * minima.size)
+        i, j = np.triu_indices(n, 1)
+        rises = minima[j] - minima[i]
+        z = np.sign(rises).sum() / np.sqrt(n * (n - 1) * (2 * n + 5) / 18)
+        return float(np.median(rises / (j - i)) * n), float(z)

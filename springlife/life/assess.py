@@ -5,6 +5,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from hashlib import sha256
@@ -16,6 +17,7 @@ import numpy as np
 from springlife.duty.schedule import EventCycles
 from springlife.errors import CriterionError, GapError, InputError
 from springlife.life import findings as notice
+from springlife.life import signal_findings
 from springlife.life.band import BandRow, Mover, greatest_mover
 from springlife.life.case import Case, load_case
 from springlife.life.damage import DamageModel, Floats, greatest_factor
@@ -186,17 +188,23 @@ def part_of(case: Case) -> tuple[HelicalSpring | None, list[Finding]]:
         return None, [notice.found("wire-off-table", str(error))]
 
 
-def judge(case: Case, duty: Duty) -> Assessment:
-    """Judge a case whose duty has been counted; nothing is read again."""
+def judge(case: Case, duty: Duty, told: Sequence[Finding] = ()) -> Assessment:
+    """Judge a case whose duty has been counted; nothing is read again.
+
+    ``told`` are findings about the records, made once with the drawn spring, that hold for this case too.
+    """
     spring, seen = part_of(case)
     if spring is None:
         return _withheld(case, seen, duty)
     say, limits = say_of(case), limit_values(case.input.limits)
     stress = stress_map(spring, case.judge.stress_factor, case.judge.curvature_on)
     seen = [
+        *told,
         *notice.of_part(spring, case.spring, limits, say),
         *notice.of_motion(spring, stress, duty, limits, say),
         *notice.of_scope(spring, case, say),
+        *signal_findings.of_rate(spring, limits, say),
+        *signal_findings.of_records(spring, stress, duty, case, limits, say),
     ]
     try:
         model = model_of(case, spring, stress)
@@ -206,6 +214,7 @@ def judge(case: Case, duty: Duty) -> Assessment:
     seen += notice.of_curve(model, limits, assumed=case.judge.endurance in BASES)
     seen += notice.of_damage(model, judgement.cycles, judgement.cycle_damage, duty, limits, say)
     seen += notice.of_life(judgement, case)
+    seen += signal_findings.of_recounts(spring, model, duty, limits)
     settled = notice.settle(seen, case.input.waive)
     if any(finding.blocks for finding in settled):
         verdict = "withheld"

@@ -7,6 +7,7 @@ from pathlib import Path
 from typing import Any
 
 from springlife.life import findings as notice
+from springlife.life import signal_findings
 from springlife.life.assess import part_of, say_of
 from springlife.life.case import Case, load_case
 from springlife.life.findings import Finding
@@ -91,6 +92,8 @@ def check(case: Case | str | Path) -> CheckResult:
         seen = [
             *notice.of_part(spring, case.spring, limits, say),
             *notice.of_motion(spring, stress, duty, limits, say),
+            *signal_findings.of_rate(spring, limits, say),
+            *signal_findings.of_records(spring, stress, duty, case, limits, say),
         ]
     return CheckResult(case, spring, duty, notice.settle(seen, case.input.waive))
 

@@ -17,6 +17,7 @@ from springlife.life.case import Case, load_case
 from springlife.life.findings import Finding, found
 from springlife.life.reading import Duty
 from springlife.life.scatter import Estimate, b_lives
+from springlife.life.signal_findings import OF_THE_RECORD
 from springlife.spring.helical import HelicalSpring
 
 Hold = Literal["stroke", "force", "length", "rate"]
@@ -115,8 +116,9 @@ def compare(case: Case | str | Path, hold: Hold = "stroke") -> Comparison:
         stops = "; ".join(finding.message for finding in drawn.findings if finding.level == "stop")
         raise InputError(f"{case.path}: the drawn spring cannot be judged, so there is nothing to compare: {stops}")
     pinned = drawn.duty.pinned(base)
+    told = [finding for finding in drawn.findings if finding.code in OF_THE_RECORD]
     options = [_option(DRAWN, drawn)]
-    options += [_option(variant.name, _judge(variant, base, pinned, hold)) for variant in variants(case)]
+    options += [_option(variant.name, _judge(variant, base, pinned, told, hold)) for variant in variants(case)]
     if len(options) <= MOST_SCATTERED:
         options = [replace(option, b10=_b10(option.assessment)) for option in options]
     return Comparison(case, hold, _marked(options), _differences(base, options, hold))
@@ -132,19 +134,19 @@ def variants(case: Case) -> Iterator[Case]:
     yield from own
 
 
-def _judge(variant: Case, base: HelicalSpring, pinned: Duty, hold: Hold) -> Assessment:
+def _judge(variant: Case, base: HelicalSpring, pinned: Duty, told: list[Finding], hold: Hold) -> Assessment:
     spring, _ = part_of(variant)
     if spring is None:
-        return judge(variant, pinned)
+        return judge(variant, pinned, told)
     if hold == "rate":
         coils = spring.total_coils + spring.active_coils * (spring.calculated_rate / base.rate - 1)
         variant = variant.varied(variant.name, {"total_coils": coils}, {}, "")
         spring, _ = part_of(variant)
     if hold == "force" and spring is not None:
-        return judge(variant, pinned.mapped(base.rate / spring.rate, 0.0))
+        return judge(variant, pinned.mapped(base.rate / spring.rate, 0.0), told)
     if hold == "length" and spring is not None:
-        return judge(variant, pinned.mapped(1.0, spring.free_length - base.free_length))
-    return judge(variant, pinned)
+        return judge(variant, pinned.mapped(1.0, spring.free_length - base.free_length), told)
+    return judge(variant, pinned, told)
 
 
 def _b10(result: Assessment) -> Estimate | None:

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field, replace
 from functools import cached_property
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 
@@ -18,6 +18,7 @@ from springlife.duty.schedule import Event, Pass
 if TYPE_CHECKING:
     from springlife.duty.record import RecordSpec, RecordSummary
     from springlife.duty.schedule import Floats
+    from springlife.duty.signal import SignalFacts
     from springlife.life.case import Case
     from springlife.life.case_input import EventInput
     from springlife.spring.helical import HelicalSpring
@@ -105,6 +106,8 @@ class EventReading:
     record: str | None = None  # as the case file names it
     sha256: str | None = None
     summary: RecordSummary | None = None
+    signal: SignalFacts | None = None
+    mended: Count | None = None  # counted without isolated samples, when there are any
     provenance: tuple[str, ...] = ()
 
     @property
@@ -144,13 +147,13 @@ class Duty:
         )
 
     def pinned(self, spring: HelicalSpring) -> Duty:
-        """Return the duty as deflections of this spring, whatever was recorded."""
-        return Duty(
-            tuple(
-                replace(event, measures="deflection", installed=0.0, count=event.count.mapped(*event.line(spring)))
-                for event in self.events
-            )
-        )
+        """Return the duty as deflections of this spring, whatever was recorded; what the signals show is left out."""
+
+        def deflection(event: EventReading) -> EventReading:
+            moved = event.count.mapped(*event.line(spring))
+            return replace(event, measures="deflection", installed=0.0, count=moved, signal=None, mended=None)
+
+        return Duty(tuple(deflection(event) for event in self.events))
 
     def mapped(self, slope: float, intercept: float) -> Duty:
         """Return a pinned duty with every deflection y made ``slope * y + intercept``; nothing is read again."""
@@ -217,18 +220,44 @@ def record_spec(case: Case, event: EventInput) -> RecordSpec:
 
 def _read_record(case: Case, event: EventInput, spring: HelicalSpring, off: Beyond, past: Beyond) -> EventReading:
     from springlife.duty.record import SummaryAccumulator, open_record
+    from springlife.duty.signal import SignalAccumulator
 
     recording = open_record(record_spec(case, event))
     slope, intercept = line_of(event.measures, spring, event.installed_deflection or 0.0)
-    pieces = "split" in (event.gaps, event.between)
-    summary, tally = SummaryAccumulator(recording), Tally(nan="split" if pieces else "error")
+    gaps: Literal["error", "split"] = "split" if "split" in (event.gaps, event.between) else "error"
+    summary, signal, tally = SummaryAccumulator(recording), SignalAccumulator(), Tally(nan=gaps)
     for block in recording.blocks():
         summary.feed(block)
+        signal.feed(block)
         tally.feed(block)
         for watch in (off, past):
             watch.feed(slope * block + intercept)
     off.sample_rate = past.sample_rate = recording.sample_rate
+    facts = signal.result(recording.sample_rate)
     return EventReading(
-        event.name, event.repeats, event.measures, event.installed_deflection or 0.0, tally.result(), off, past,
-        event.record, recording.sha256, summary.result(), recording.provenance,
-    )  # fmt: skip
+        name=event.name,
+        repeats=event.repeats,
+        measures=event.measures,
+        installed=event.installed_deflection or 0.0,
+        count=tally.result(),
+        off_seat=off,
+        past_solid=past,
+        record=event.record,
+        sha256=recording.sha256,
+        summary=summary.result(),
+        signal=facts,
+        mended=_mended(case, event, facts.spike_at, gaps) if facts.spikes else None,
+        provenance=recording.provenance,
+    )
+
+
+def _mended(case: Case, event: EventInput, places: tuple[int, ...], gaps: Literal["error", "split"]) -> Count:
+    """Count a record again without its isolated samples (the first of them, when there are many)."""
+    from springlife.duty.record import open_record
+    from springlife.duty.signal import without_spikes
+
+    tally, start, at = Tally(nan=gaps), 0, np.array(places, dtype=np.intp)
+    for block in open_record(record_spec(case, event)).blocks():
+        tally.feed(without_spikes(block, at[(at >= start) & (at < start + block.size)] - start))
+        start += block.size
+    return tally.result()
