@@ -19,6 +19,7 @@ from springlife.spring.stress import stress_map
 from springlife.units import UnitSystem, significant
 
 Rows = list[tuple[str, str]]
+PLOT = (6, 64)  # lines and columns of a record's plot
 
 
 @dataclass(frozen=True)
@@ -122,6 +123,21 @@ def _spring_rows(spring: HelicalSpring, say: UnitSystem) -> Rows:
     ]  # fmt: skip
 
 
+def _plot_rows(event: EventReading, say: UnitSystem, kind: str) -> Rows:
+    """Draw a record in a few lines: each column spans the least and greatest value of a stretch."""
+    if event.envelope is None or event.summary is None or not event.summary.maximum > event.summary.minimum:
+        return []
+    low, high = event.envelope.columns(PLOT[1])
+    bottom, top = event.summary.minimum, event.summary.maximum
+    step = (top - bottom) / PLOT[0]
+    rows: Rows = []
+    for line in range(PLOT[0] - 1, -1, -1):
+        inside = (low <= bottom + (line + 1) * step) & (high >= bottom + line * step)
+        label = say(top, kind, 3) if line == PLOT[0] - 1 else say(bottom, kind, 3) if line == 0 else ""
+        rows.append((label, "".join("┃" if one else " " for one in inside)))
+    return rows
+
+
 def _event_rows(event: EventReading, say: UnitSystem) -> Rows:
     kind = "force" if event.measures == "force" else "length"
     c = event.count
@@ -137,4 +153,5 @@ def _event_rows(event: EventReading, say: UnitSystem) -> Rows:
         rows.insert(0, ("record", f"{event.record}, sha256 {(event.sha256 or '')[:16]}…"))
     if event.summary is not None:
         rows += event.summary.lines()
+        rows += _plot_rows(event, say, kind)
     return rows + [("read", line) for line in event.provenance]

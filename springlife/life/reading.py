@@ -16,6 +16,7 @@ from springlife.duty.counting import Count, Tally, count
 from springlife.duty.schedule import Event, Pass
 
 if TYPE_CHECKING:
+    from springlife.duty.envelope import Envelope
     from springlife.duty.record import RecordSpec, RecordSummary
     from springlife.duty.schedule import Floats
     from springlife.duty.signal import SignalFacts
@@ -107,6 +108,7 @@ class EventReading:
     sha256: str | None = None
     summary: RecordSummary | None = None
     signal: SignalFacts | None = None
+    envelope: Envelope | None = None
     mended: Count | None = None  # counted without isolated samples, when there are any
     provenance: tuple[str, ...] = ()
 
@@ -219,6 +221,7 @@ def record_spec(case: Case, event: EventInput) -> RecordSpec:
 
 
 def _read_record(case: Case, event: EventInput, spring: HelicalSpring, off: Beyond, past: Beyond) -> EventReading:
+    from springlife.duty.envelope import EnvelopeAccumulator
     from springlife.duty.record import SummaryAccumulator, open_record
     from springlife.duty.signal import SignalAccumulator
 
@@ -226,9 +229,11 @@ def _read_record(case: Case, event: EventInput, spring: HelicalSpring, off: Beyo
     slope, intercept = line_of(event.measures, spring, event.installed_deflection or 0.0)
     gaps: Literal["error", "split"] = "split" if "split" in (event.gaps, event.between) else "error"
     summary, signal, tally = SummaryAccumulator(recording), SignalAccumulator(), Tally(nan=gaps)
+    envelope = EnvelopeAccumulator()
     for block in recording.blocks():
         summary.feed(block)
         signal.feed(block)
+        envelope.feed(block)
         tally.feed(block)
         for watch in (off, past):
             watch.feed(slope * block + intercept)
@@ -246,6 +251,7 @@ def _read_record(case: Case, event: EventInput, spring: HelicalSpring, off: Beyo
         sha256=recording.sha256,
         summary=summary.result(),
         signal=facts,
+        envelope=envelope.result(),
         mended=_mended(case, event, facts.spike_at, gaps) if facts.spikes else None,
         provenance=recording.provenance,
     )
