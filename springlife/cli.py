@@ -251,8 +251,11 @@ def _print_json(data: Any) -> None:
 
 def _assess(arguments: argparse.Namespace) -> int:
     from springlife.life.assess import assess
+    from springlife.report.progress import Progress
 
-    result = assess(arguments.case)
+    progress = Progress()
+    result = assess(arguments.case, progress)
+    progress.close()
     wave = None
     if arguments.surge and result.judgement is not None:
         from springlife.life.surge import with_surge
@@ -286,8 +289,11 @@ def _surge(arguments: argparse.Namespace) -> int:
 
 def _check(arguments: argparse.Namespace) -> int:
     from springlife.life.check import check
+    from springlife.report.progress import Progress
 
-    result = check(arguments.case)
+    progress = Progress()
+    result = check(arguments.case, progress)
+    progress.close()
     if arguments.json:
         _print_json(result.to_dict())
     else:

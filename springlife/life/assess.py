@@ -23,7 +23,7 @@ from springlife.life.case import Case, load_case
 from springlife.life.damage import DamageModel, Floats, greatest_factor
 from springlife.life.findings import Finding
 from springlife.life.limits import limit_values
-from springlife.life.reading import Duty, read_duty
+from springlife.life.reading import Duty, Watcher, read_duty
 from springlife.spring.grade import WireRangeError
 from springlife.spring.helical import GeometryError, HelicalSpring
 from springlife.spring.stress import StressMap, stress_map
@@ -159,8 +159,8 @@ class Assessment:
         return as_dict(self)
 
 
-def assess(case: Case | str | Path) -> Assessment:
-    """Read a case's duty and judge it.
+def assess(case: Case | str | Path, watch: Watcher | None = None) -> Assessment:
+    """Read a case's duty and judge it; ``watch`` is told how far reading is.
 
     Raises
     ------
@@ -172,7 +172,7 @@ def assess(case: Case | str | Path) -> Assessment:
     if spring is None:
         return _withheld(case, stops, None)
     try:
-        duty = read_duty(case, spring)
+        duty = read_duty(case, spring, watch)
     except GapError as error:
         return _withheld(case, [notice.found("gap", str(error))], None)
     return judge(case, duty)

@@ -12,7 +12,7 @@ from springlife.life.assess import part_of, say_of
 from springlife.life.case import Case, load_case
 from springlife.life.findings import Finding
 from springlife.life.limits import limit_values
-from springlife.life.reading import Duty, EventReading, read_duty
+from springlife.life.reading import Duty, EventReading, Watcher, read_duty
 from springlife.life.result import spring_facts
 from springlife.spring.helical import HelicalSpring
 from springlife.spring.stress import stress_map
@@ -74,7 +74,7 @@ class CheckResult:
         }
 
 
-def check(case: Case | str | Path) -> CheckResult:
+def check(case: Case | str | Path, watch: Watcher | None = None) -> CheckResult:
     """Read a case and its records; findings of the part and the motion only.
 
     Raises
@@ -86,7 +86,7 @@ def check(case: Case | str | Path) -> CheckResult:
     spring, seen = part_of(case)
     if spring is None:
         return CheckResult(case, None, None, notice.settle(seen, case.input.waive))
-    duty, seen = read_or_stop(case, spring)
+    duty, seen = read_or_stop(case, spring, watch)
     if duty is not None:
         say, limits = say_of(case), limit_values(case.input.limits)
         stress = stress_map(spring, case.judge.stress_factor, case.judge.curvature_on)
@@ -99,12 +99,12 @@ def check(case: Case | str | Path) -> CheckResult:
     return CheckResult(case, spring, duty, notice.settle(seen, case.input.waive))
 
 
-def read_or_stop(case: Case, spring: HelicalSpring) -> tuple[Duty | None, list[Finding]]:
+def read_or_stop(case: Case, spring: HelicalSpring, watch: Watcher | None) -> tuple[Duty | None, list[Finding]]:
     """Read the duty; a record with gaps is a stop, not a crash."""
     from springlife.errors import GapError
 
     try:
-        return read_duty(case, spring), []
+        return read_duty(case, spring, watch), []
     except GapError as error:
         return None, [notice.found("gap", str(error))]
 

@@ -6,6 +6,7 @@ deflection, so that a change of free length or rate never touches the record aga
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass, field, replace
 from functools import cached_property
 from typing import TYPE_CHECKING, Literal
@@ -175,18 +176,21 @@ class Duty:
         return total.minimum, total.maximum
 
 
-def read_duty(case: Case, spring: HelicalSpring) -> Duty:
-    """Read and count every event of the case.
+Watcher = Callable[[str, int], object]  # told the event's name and the samples read so far
+
+
+def read_duty(case: Case, spring: HelicalSpring, watch: Watcher | None = None) -> Duty:
+    """Read and count every event of the case; ``watch`` is told how far it is.
 
     Raises
     ------
     FileError, InputError
         From the record: what is wrong, where, and what would be right.
     """
-    return Duty(tuple(_read_event(case, event, spring) for event in case.duty.event))
+    return Duty(tuple(_read_event(case, event, spring, watch) for event in case.duty.event))
 
 
-def _read_event(case: Case, event: EventInput, spring: HelicalSpring) -> EventReading:
+def _read_event(case: Case, event: EventInput, spring: HelicalSpring, watch: Watcher | None) -> EventReading:
     off, past = Beyond(-1.0, 0.0), Beyond(1.0, spring.solid_deflection)
     if event.blocks is not None:
         total = Count()
@@ -196,7 +200,7 @@ def _read_event(case: Case, event: EventInput, spring: HelicalSpring) -> EventRe
             off.feed_cycles(np.array([block.low]), cycles)
             past.feed_cycles(np.array([block.high]), cycles)
         return EventReading(event.name, event.repeats, "deflection", 0.0, total, off, past)
-    return _read_record(case, event, spring, off, past)
+    return _read_record(case, event, spring, off, past, watch)
 
 
 def record_spec(case: Case, event: EventInput) -> RecordSpec:
@@ -220,7 +224,9 @@ def record_spec(case: Case, event: EventInput) -> RecordSpec:
     )
 
 
-def _read_record(case: Case, event: EventInput, spring: HelicalSpring, off: Beyond, past: Beyond) -> EventReading:
+def _read_record(
+    case: Case, event: EventInput, spring: HelicalSpring, off: Beyond, past: Beyond, watch: Watcher | None
+) -> EventReading:
     from springlife.duty.envelope import EnvelopeAccumulator
     from springlife.duty.record import SummaryAccumulator, open_record
     from springlife.duty.signal import SignalAccumulator
@@ -229,14 +235,18 @@ def _read_record(case: Case, event: EventInput, spring: HelicalSpring, off: Beyo
     slope, intercept = line_of(event.measures, spring, event.installed_deflection or 0.0)
     gaps: Literal["error", "split"] = "split" if "split" in (event.gaps, event.between) else "error"
     summary, signal, tally = SummaryAccumulator(recording), SignalAccumulator(), Tally(nan=gaps)
-    envelope = EnvelopeAccumulator()
+    envelope, samples = EnvelopeAccumulator(), 0
     for block in recording.blocks():
         summary.feed(block)
         signal.feed(block)
         envelope.feed(block)
         tally.feed(block)
-        for watch in (off, past):
-            watch.feed(slope * block + intercept)
+        deflection = slope * block + intercept
+        off.feed(deflection)
+        past.feed(deflection)
+        samples += block.size
+        if watch is not None:
+            watch(event.name, samples)
     off.sample_rate = past.sample_rate = recording.sample_rate
     facts = signal.result(recording.sample_rate)
     return EventReading(
