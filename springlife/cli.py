@@ -266,7 +266,8 @@ def _assess(arguments: argparse.Namespace) -> int:
     else:
         from springlife.report.terminal import print_assessment
 
-        print_assessment(result, CAUTION)
+        beneath = f"without the spring's own mass; with it: {wave.verdict.upper()} (see below)" if wave else ""
+        print_assessment(result, CAUTION, beneath)
         if wave:
             from springlife.report.surge_text import print_surge_part
 

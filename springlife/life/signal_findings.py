@@ -35,6 +35,7 @@ CONFUSED = {
 OF_THE_RECORD = ("swapped-signal", "wrong-datum", "ac-coupled")
 CENTRED = 0.05  # mean within this share of the range of zero
 HARMONICS = 5
+MANY_CROSSINGS = 20  # of the mean level: ten cycles
 
 
 def of_rate(spring: HelicalSpring, limits: Limits, say: UnitSystem) -> Iterator[Finding]:
@@ -118,8 +119,9 @@ def _sensor(event: EventReading, seen: RecordSummary, signal: SignalFacts, limit
     if seen.levels is not None and seen.levels < limits["levels_low"]:
         yield found("coarse-steps", f"{event.name!r} takes {seen.levels} distinct values")
     reach = seen.maximum - seen.minimum
-    # Minima of a random ride scatter: only a trend that chance does not make is a drift.
-    moved = 0.0 if seen.drift is None or abs(seen.drift_z or 0.0) <= 3 else abs(seen.drift) / reach
+    # Minima of a random ride scatter, and a few slow cycles are no trend: a drift is what neither makes.
+    steady = seen.drift is None or abs(seen.drift_z or 0.0) <= 3 or signal.crossings < MANY_CROSSINGS
+    moved = 0.0 if seen.drift is None or steady else abs(seen.drift) / reach
     if moved > limits["drift_share"]:
         yield found("drift", f"the running minimum of {event.name!r} moves by {100 * moved:.0f} % of the range")
     few = signal.samples_a_cycle
@@ -197,7 +199,9 @@ def of_recounts(spring: HelicalSpring, model: DamageModel, duty: Duty, limits: L
             lost = 100 * float(rows[small].sum()) / whole
             message = f"{100 * small.mean():.0f} % of the distinct cycles of {event.name!r} are under "
             message += f"{100 * limits['noise_range']:g} % of its largest; a gate there would take "
-            yield found("noise-counted", f"{message}{significant(lost, 2)} % of its damage")
+            yield found(
+                "noise-counted", f"{message}{'under 0.01' if lost < 0.01 else significant(lost, 2)} % of its damage"
+            )
 
 
 def _damage_of(

@@ -72,13 +72,15 @@ def print_table(
     console.print(table)
 
 
-def print_assessment(result: Assessment, caution: str) -> None:
-    """Print a judged case."""
+def print_assessment(result: Assessment, caution: str, beneath: str = "") -> None:
+    """Print a judged case; ``beneath`` stands right under the verdict."""
     from rich.text import Text
 
     console = console_for_output()
     text, style = VERDICTS[result.verdict]
     console.print(Text(text, style=style))
+    if beneath:
+        console.print(Text(beneath, style="bold"))
     given = result.case.input
     console.print(Text(" · ".join(part for part in (given.title, given.part, given.revision) if part)))
     console.print()
