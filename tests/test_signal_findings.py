@@ -171,6 +171,22 @@ def test_measured_rate_against_the_calculated_one(rate: str, code: str | None, w
     assert code is None or words in found[code]
 
 
+def test_peaks_between_samples_are_an_estimate_beside_the_plain_count(tmp_path: Path) -> None:
+    """A sine sampled eight times a cycle, never at its peaks, loses 1 - cos(22.5 deg) of its amplitude."""
+    n = np.arange(8 * 500)
+    y = 12 + 6 * np.cos(2 * np.pi * (n + 0.5) / 8)
+    event = EVENT.replace("200 Hz", "16 Hz")
+    asked = QUIET.replace("[judge]", "[judge]\npeaks_between_samples = true")
+    plain, beside = judged(tmp_path, y, event, ""), judged(tmp_path, y, event, "", asked)
+    assert plain.judgement is not None and beside.judgement is not None
+    assert beside.judgement.damage_per_pass == plain.judgement.damage_per_pass
+    (message,) = (f.message for f in beside.findings if f.code == "peaks-between")
+    factor = float(message.split("would be ")[1].split()[0])
+    # Haibach's slope 2k - 1 = 11.06 on the amplitude alone (k = 6.03), by hand: 1.0824^11.06 = 2.40.
+    assert factor == pytest.approx(2.40, rel=0.02)
+    assert "peaks-between" not in {code for code, _ in codes(plain)}
+
+
 @pytest.mark.parametrize("size", [1, 7, 1000, 100_000])
 def test_facts_do_not_depend_on_the_blocks(size: int) -> None:
     """Fed sample by sample or whole: the same count at half rate, steps, crossings and runs."""

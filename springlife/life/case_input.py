@@ -143,6 +143,7 @@ class JudgeInput(Table):
     curvature_on: Literal["both", "alternating"] = "both"
     allowed_damage: Positive = 1.0
     residue: Literal["repeat", "half", "drop"] = "repeat"
+    peaks_between_samples: bool = False  # estimate what the sampling rate cut off, beside the plain count
     strength_fraction: Share | None = None  # f of the two-point curve; None takes the data file's value
     knee: Annotated[float, Field(gt=1e4)] | None = None
 

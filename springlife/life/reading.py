@@ -15,6 +15,7 @@ import numpy as np
 
 from springlife.duty.counting import Count, Tally, count
 from springlife.duty.schedule import Event, Pass
+from springlife.errors import InputError
 
 if TYPE_CHECKING:
     from springlife.duty.envelope import Envelope
@@ -26,6 +27,7 @@ if TYPE_CHECKING:
     from springlife.spring.helical import HelicalSpring
 
 Line = tuple[float, float]
+FINER = 8  # times finer that peaks between samples are looked for
 ROUNDING = 1e-9  # m: a nanometre past a limit is the arithmetic's, not the spring's
 
 
@@ -111,6 +113,7 @@ class EventReading:
     signal: SignalFacts | None = None
     envelope: Envelope | None = None
     mended: Count | None = None  # counted without isolated samples, when there are any
+    finer: Count | None = None  # counted with band-limited peaks between samples, when the case asks
     provenance: tuple[str, ...] = ()
 
     @property
@@ -154,7 +157,9 @@ class Duty:
 
         def deflection(event: EventReading) -> EventReading:
             moved = event.count.mapped(*event.line(spring))
-            return replace(event, measures="deflection", installed=0.0, count=moved, signal=None, mended=None)
+            return replace(
+                event, measures="deflection", installed=0.0, count=moved, signal=None, mended=None, finer=None
+            )
 
         return Duty(tuple(deflection(event) for event in self.events))
 
@@ -263,6 +268,7 @@ def _read_record(
         signal=facts,
         envelope=envelope.result(),
         mended=_mended(case, event, facts.spike_at, gaps) if facts.spikes else None,
+        finer=_finer(case, event, recording.sample_rate) if case.judge.peaks_between_samples else None,
         provenance=recording.provenance,
     )
 
@@ -276,4 +282,27 @@ def _mended(case: Case, event: EventInput, places: tuple[int, ...], gaps: Litera
     for block in open_record(record_spec(case, event)).blocks():
         tally.feed(without_spikes(block, at[(at >= start) & (at < start + block.size)] - start))
         start += block.size
+    return tally.result()
+
+
+def _finer(case: Case, event: EventInput, sample_rate: float | None) -> Count:
+    """Count a record again, :data:`FINER` times finer by band-limited interpolation.
+
+    Raises
+    ------
+    InputError
+        The record has gaps, across which nothing can be interpolated.
+    """
+    from springlife.duty.record import open_record
+    from springlife.spring.surge_filter import Band, overlap_save
+
+    if "split" in (event.gaps, event.between):
+        raise InputError(f"{event.record}: peaks_between_samples needs a record without gaps or pieces kept apart")
+    band = Band.of(sample_rate or 1.0, None)
+    tally = Tally()
+    ones = [lambda frequency: np.ones((1, frequency.size), complex)]
+    for part in overlap_save(
+        open_record(record_spec(case, event)).blocks(), ones, band, 8 * band.ripple, FINER, "moving"
+    ):
+        tally.feed(part[0])
     return tally.result()

@@ -194,6 +194,10 @@ def of_recounts(spring: HelicalSpring, model: DamageModel, duty: Duty, limits: L
             where = ", ".join(str(place + 1) for place in event.signal.spike_at[:5])
             message = f"{event.name!r} has {event.signal.spikes} isolated samples (first at {where})"
             yield found("spikes", f"{message}; without them its damage is {significant(share, 3)} times as large")
+        if event.finer is not None:
+            share = float(_damage_of(event, event.finer, spring, model)[2].sum()) / whole
+            message = f"with band-limited peaks between its samples the damage of {event.name!r} would be "
+            yield found("peaks-between", f"{message}{significant(share, 4)} times as large; the plain count is used")
         small = high - low <= limits["noise_range"] * float((high - low).max())
         if small.mean() > limits["noise_share"]:
             lost = 100 * float(rows[small].sum()) / whole
