@@ -121,16 +121,29 @@ def test_the_two_zeros_are_one_value(loops):
     assert (low.tolist(), number.tolist()) == ([0.0], [2]) and not np.signbit(low[0])
 
 
-def test_both_fill_the_same_cells():
-    rng = np.random.default_rng(3)
-    low = rng.normal(size=1000)
-    high = low + rng.random(1000)
-    for number in (rng.integers(1, 2**30, 1000), np.broadcast_to(np.int64(1), 1000)):
-        cells = [np.zeros((64, 64, 3), dtype=np.int64) for _ in range(2)]
-        for loops, into in zip((stack, kernels), cells, strict=True):
-            loops.fold(low, high, number, 0.25, -32.0, 2.0**20, into)
-        assert np.array_equal(*cells)
-        assert cells[0][:, :, 0].sum() == number.sum()
+@given(
+    st.lists(st.tuples(st.integers(-30, 10), st.integers(1, 20), st.integers(1, 2**30)), min_size=1, max_size=60),
+    st.booleans(),
+)
+def test_both_fill_the_same_cells(rows, once):
+    low, span, number = (np.array(column) for column in zip(*rows, strict=True))
+    low = low / 7
+    high = low + span / 3
+    if once:
+        number = np.broadcast_to(np.int64(1), low.size)
+    answers = []
+    for loops in (stack, kernels):
+        cells, largest, times = np.zeros((64, 64, 3), dtype=np.int64), np.zeros(2), np.zeros(1, dtype=np.int64)
+        for part in (slice(0, 20), slice(20, None)):
+            if low[part].size:
+                loops.fold(low[part], high[part], number[part], 0.25, -32.0, 2.0**20, cells, largest, times)
+        answers.append((cells, largest, times))
+    assert all(np.array_equal(a, b) for a, b in zip(*answers, strict=True))
+    cells, largest, times = answers[0]
+    assert cells[:, :, 0].sum() == number.sum()
+    widest = max(zip(high - low, low, high, strict=True))
+    assert largest.tolist() == list(widest[1:])
+    assert times[0] == number[(low == widest[1]) & (high == widest[2])].sum()
 
 
 class TestChoice:

@@ -92,28 +92,33 @@ class Grid:
     def __init__(self, bag: Cycles) -> None:
         """Start with some cycles; their range sets the steps in which means are kept."""
         self._lowest, self._highest = bag.low.min(), bag.high.max()
-        self._width = width(self._lowest, self._highest, SIDE)
-        self._first = np.floor(self._lowest / self._width)
+        self._lay_out(0.0)
         self._step = self._width / FINE
         self._cells = np.zeros((SIDE, SIDE, 3), dtype=np.int64)
-        self._largest = (0.0, 0.0)
-        self._times = 0
+        self._largest, self._times = np.zeros(2), np.zeros(1, dtype=np.int64)
         self.add(bag)
+
+    def _lay_out(self, least: float) -> None:
+        """Choose the width of cells, and the first of them so that the range can grow on both sides."""
+        self._width = max(least, width(self._lowest, self._highest, SIDE))
+        lowest, highest = self._lowest // self._width, self._highest // self._width
+        self._first = lowest - (SIDE - 1 - (highest - lowest)) // 2
 
     def add(self, bag: Cycles) -> None:
         """Add cycles."""
         self._cover(bag.low.min(), bag.high.max())
-        self._remember(bag)
-        self._fold(bag.low, bag.high, bag.number, self._cells)
+        loops(len(bag)).fold(
+            bag.low, bag.high, bag.number, self._width, self._first, self._width / self._step, self._cells,
+            self._largest, self._times,
+        )  # fmt: skip
 
     def _cover(self, low: float, high: float) -> None:
         """Make room for a wider range."""
-        if low >= self._lowest and high <= self._highest:
-            return
         self._lowest, self._highest = min(low, self._lowest), max(high, self._highest)
+        if self._lowest // self._width >= self._first and self._highest // self._width < self._first + SIDE:
+            return
         was, first, old = self._width, self._first, self._cells
-        self._width = max(was, width(self._lowest, self._highest, SIDE))
-        self._first = np.floor(self._lowest / self._width)
+        self._lay_out(was)
         i, j = np.nonzero(old[:, :, 0])
         moved = old[i, j]
         if self._width / self._step > FINEST:
@@ -129,31 +134,22 @@ class Grid:
             places.append((place - self._first).astype(np.int64))
         np.add.at(self._cells, (places[0], places[1]), moved)
 
-    def _remember(self, bag: Cycles) -> None:
-        """Keep the cycle of the largest range; of several, the one with the highest ends."""
-        span = bag.high - bag.low
-        most = span.max()
-        if most < self._largest[1] - self._largest[0]:
-            return
-        at = np.flatnonzero(span == most)
-        k = at[np.argmax(bag.low[at])]
-        low, high = float(bag.low[k]), float(bag.high[k])
-        if (most, low) > (self._largest[1] - self._largest[0], self._largest[0]):
-            self._largest, self._times = (low, high), 0
-        same = (bag.low == self._largest[0]) & (bag.high == self._largest[1])
-        self._times += int(bag.number[same].sum())
-
     def cycles(self) -> Cycles:
         """Return one row for each cell that holds cycles, and one for the largest cycle."""
-        cells, (lowest, highest) = self._cells.copy(), (np.array([end]) for end in self._largest)
-        self._fold(lowest, highest, np.array([-self._times]), cells)
-        i, j = np.nonzero(cells[:, :, 0])
-        number, low_steps, high_steps = cells[i, j].T
+        i, j = np.nonzero(self._cells[:, :, 0])
+        sums = self._cells[i, j]
+        edges = self._largest // self._width  # take the largest cycle out of its cell
+        at = np.flatnonzero((i + self._first == edges[0]) & (j + self._first == edges[1]))
+        steps = (self._largest - edges * self._width) / self._step
+        sums[at] -= self._times * np.array([1, *steps.astype(np.int64)])
+        held = sums[:, 0] > 0
+        i, j, (number, low_steps, high_steps) = i[held], j[held], sums[held].T
         low = (self._first + i) * self._width + (low_steps / number + 0.5) * self._step
         high = (self._first + j) * self._width + (high_steps / number + 0.5) * self._step
         high = np.maximum(high, np.nextafter(low, np.inf))  # ranges under a step still are cycles
-        return Cycles(np.append(low, lowest), np.append(high, highest), np.append(number, self._times), self._width)
-
-    def _fold(self, low: Floats, high: Floats, number: Ints, cells: Ints) -> None:
-        fine = self._width / self._step
-        loops(low.size).fold(low, high, number, self._width, self._first, fine, cells)
+        return Cycles(
+            np.append(low, self._largest[0]),
+            np.append(high, self._largest[1]),
+            np.append(number, self._times),
+            self._width,
+        )

@@ -23,7 +23,7 @@ BLOCK = 4096  # samples: 32 kB of turning points; 1,024 to 8,192 differ by a few
 PAYS = np.uint64(4)  # a pass is repeated while it takes out more than one point in four
 
 _numba: Any = numba  # partly typed, and signatures are not
-_floats, _ints, _places, _cells = _numba.float64[::1], _numba.int64[::1], _numba.int32[::1], _numba.int64[:, :, ::1]
+_floats, _ints, _places, _cells = (_numba.float64[::1], _numba.int64[::1], _numba.int32[::1], _numba.int64[:, :, ::1])
 _given, _whole = (_numba.types.Array(of, 1, "C", readonly=True) for of in (_numba.float64, _numba.int64))
 _sizes = _numba.types.UniTuple(_numba.int64, 2)
 
@@ -43,33 +43,47 @@ _zero, _one, _two, _three = (np.uint64(i) for i in range(4))
 
 
 @_compiled()
-def _turns(x, start, end, last, rising, out):  # type: ignore[no-untyped-def]
-    """Compact the turning points of x[start:end] into ``out``; ``last`` came before and was reached ``rising``."""
-    n, was, before, level = _zero, rising, last, False
-    for i in range(start, end):
-        v = x[i]
-        up = v > before
-        level |= v == before
-        out[n] = before
-        n += np.uint64(up != was)
-        was, before = up, v
+def _compact(b, size, rising, up, out):  # type: ignore[no-untyped-def]
+    """Put those of b[:size] that turn into ``out``; b[:size + 1] has no neighbours alike, b[0] was reached ``rising``.
+
+    The first two loops become vector instructions. ``out`` may be ``b``.
+    """
+    up[0] = rising
+    for k in range(size):
+        up[k + 1] = b[k + 1] > b[k]
+    rising = up[size]
+    for k in range(size):
+        up[k] ^= up[k + 1]
+    n = _zero
+    for k in range(size):
+        out[n] = b[k]
+        n += np.uint64(up[k])
+    return n, rising
+
+
+@_compiled()
+def _turns(b, rising, up, out):  # type: ignore[no-untyped-def]
+    """Put the samples of b but the last that turn into ``out``; b[0] was reached ``rising``.
+
+    Returns how many they are, whether the last sample was reached rising, and whether all are finite.
+    """
+    size, level, odd = b.size - 1, 0, 0
+    for k in range(size):
+        v = b[k + 1]
+        level += v == b[k]
+        odd += v - v != 0.0
     if not level:
-        return n, before, was
-    m, before = _one, last  # plateaus: first drop what repeats
-    out[_zero] = last
-    for i in range(start, end):
-        v = x[i]
-        out[m] = v
-        m += np.uint64(v != before)
-        before = v
-    n, was, before = _zero, rising, last
-    for i in range(_one, m):
-        v = out[i]
-        up = v > before
-        out[n] = before
-        n += np.uint64(up != was)
-        was, before = up, v
-    return n, before, was
+        n, rising = _compact(b, size, rising, up, out)
+        return n, rising, odd == 0
+    for k in range(size):
+        up[k] = b[k + 1] != b[k]
+    m = _one
+    out[0] = b[0]
+    for k in range(size):  # plateaus: first drop what repeats
+        out[m] = b[k + 1]
+        m += np.uint64(up[k])
+    n, rising = _compact(out, np.int64(m) - 1, rising, up, out)
+    return n, rising, odd == 0
 
 
 @_compiled()
@@ -138,30 +152,27 @@ def _stack(p, n, peak, s, t, low, high, m):  # type: ignore[no-untyped-def]
 
 @_compiled(_sizes(_given, _floats, _floats, _floats))
 def _reduce(x, low, high, s):  # type: ignore[no-untyped-def]
-    size, out = x.size, np.empty(BLOCK + 2)
+    size, out, up = x.size, np.empty(BLOCK + 1), np.empty(BLOCK + 1, dtype=np.uint8)
     m, t, i = _zero, _one, 1
     while i < size and x[i] == x[0]:
         i += 1
     s[0] = x[0]
     if i == size:
         return np.int64(0), np.int64(1 if np.isfinite(x[0]) else -1)
-    rising, last = x[i] > x[0], x[i]
-    finite = np.isfinite(x[0]) & np.isfinite(last)
-    i += 1
-    while i < size and finite:
-        end = min(size, i + BLOCK)
-        for j in range(i, end):
-            finite &= x[j] - x[j] == 0.0
-        peak = rising
-        n, last, rising = _turns(x, i, end, last, rising, out)
+    rising = np.uint8(x[i] > x[0])
+    finite = np.isfinite(x[0]) and np.isfinite(x[i])
+    while i < size - 1 and finite:
+        end = min(size - 1, i + BLOCK)
+        peak = rising > 0
+        n, rising, finite = _turns(x[i : end + 1], rising, up, out)
         before = n + n
         while PAYS * (before - n) > before:
             before = n
             n, m = _peel(out, n, peak, low, high, m)
         t, m = _stack(out, n, peak, s, t, low, high, m)
         i = end
-    out[0] = last
-    t, m = _stack(out, _one, rising, s, t, low, high, m)
+    out[0] = x[i]
+    t, m = _stack(out, _one, rising > 0, s, t, low, high, m)
     return np.int64(m), np.int64(t) if finite else np.int64(-1)
 
 
@@ -277,19 +288,36 @@ def group(low: Floats, high: Floats, number: Ints, most: int) -> tuple[Floats, F
     return None if used < 0 else (rows[0][:used], rows[1][:used], rows[2][:used])
 
 
-@_compiled(_numba.void(_given, _given, _whole, _numba.float64, _numba.float64, _numba.float64, _cells))
-def _fold(low, high, number, per_cell, first, fine, cells):  # type: ignore[no-untyped-def]
+@_compiled(_numba.void(_given, _given, _whole, *[_numba.float64] * 3, _cells, _floats, _ints))
+def _fold(low, high, number, per_cell, first, fine, cells, largest, times):  # type: ignore[no-untyped-def]
     each = 1 if number.size == low.size else 0  # 0: one number for all
+    side, flat = cells.shape[0], cells.reshape(-1)
+    span = largest[1] - largest[0]
     for r in range(low.size):
-        a, b = low[r] * per_cell, high[r] * per_cell
+        x, y, n = low[r], high[r], number[each * r]
+        if y - x >= span:
+            if x == largest[0] and y == largest[1]:
+                times[0] += n
+            elif y - x > span or x > largest[0]:
+                largest[0], largest[1], times[0], span = x, y, n, y - x
+        a, b = x * per_cell, y * per_cell
         i, j = np.floor(a), np.floor(b)
-        cell = cells[np.uint64(i - first), np.uint64(j - first)]
-        n = number[each * r]
-        cell[_zero] += n
-        cell[_one] += n * np.int64((a - i) * fine)
-        cell[_two] += n * np.int64((b - j) * fine)
+        at = _three * np.uint64((i - first) * side + (j - first))
+        flat[at] += n
+        flat[at + _one] += n * np.int64((a - i) * fine)
+        flat[at + _two] += n * np.int64((b - j) * fine)
 
 
-def fold(low: Floats, high: Floats, number: Ints, width: float, first: float, fine: float, cells: Ints) -> None:
+def fold(
+    low: Floats,
+    high: Floats,
+    number: Ints,
+    width: float,
+    first: float,
+    fine: float,
+    cells: Ints,
+    largest: Floats,
+    times: Ints,
+) -> None:
     """Add cycles to cells; see ``stack.fold``."""
-    _fold(low, high, _dense(number), 1 / width, first, fine, cells)
+    _fold(low, high, _dense(number), 1 / width, first, fine, cells, largest, times)

@@ -241,7 +241,17 @@ def group(low: Floats, high: Floats, number: Ints, most: int) -> tuple[Floats, F
     return low[by][starts] + 0.0, high[by][starts] + 0.0, np.add.reduceat(number[by], starts)  # -0.0 is 0.0
 
 
-def fold(low: Floats, high: Floats, number: Ints, width: float, first: float, fine: float, cells: Ints) -> None:
+def fold(
+    low: Floats,
+    high: Floats,
+    number: Ints,
+    width: float,
+    first: float,
+    fine: float,
+    cells: Ints,
+    largest: Floats,
+    times: Ints,
+) -> None:
     """Add cycles to cells.
 
     Parameters
@@ -256,13 +266,22 @@ def fold(low: Floats, high: Floats, number: Ints, width: float, first: float, fi
     cells : int array, shape (side, side, 3)
         By cells of low and high: cycles, and the sums of the whole steps of low and high above the cells' edges.
         Sums of whole numbers come out alike in any order.
+    largest : float array, shape (2,)
+        Low and high of the cycle with the largest range; of equal ranges, the one that lies highest.
+    times : int array, shape (1,)
+        How often it has occurred.
     """
     a, b = low / width, high / width
     i, j = np.floor(a), np.floor(b)
     side = cells.shape[0]
     place = ((i - first) * side + (j - first)).astype(np.int64)
     flat = cells.reshape(-1, 3)
-    # bincount adds floats; an int64 sum of many repeats may not fit them
-    np.add.at(flat[:, 0], place, number)
+    np.add.at(flat[:, 0], place, number)  # bincount would add floats
     np.add.at(flat[:, 1], place, number * ((a - i) * fine).astype(np.int64))
     np.add.at(flat[:, 2], place, number * ((b - j) * fine).astype(np.int64))
+    span = high - low
+    widest = np.flatnonzero(span == span.max())
+    k = widest[np.argmax(low[widest])]
+    if (span[k], low[k]) > (largest[1] - largest[0], largest[0]):
+        largest[:], times[0] = (low[k], high[k]), 0
+    times[0] += number[(low == largest[0]) & (high == largest[1])].sum()
