@@ -6,6 +6,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+from springlife.duty.counting import Count
 from springlife.life import findings as notice
 from springlife.life import signal_findings
 from springlife.life.assess import part_of, say_of
@@ -121,6 +122,11 @@ def _spring_rows(spring: HelicalSpring, say: UnitSystem) -> Rows:
         ("solid", f"deflection {say(spring.solid_deflection, 'length')}, force {say(spring.solid_force, 'force')}"),
         ("mass", f"{say(spring.mass, 'mass')}, surge frequency {say(spring.surge_frequency, 'frequency')}"),
     ]  # fmt: skip
+
+
+def _kept(counted: Count) -> str:
+    """Say when there were too many distinct cycles to keep each exactly."""
+    return "" if counted.exact else f", kept in cells of {significant(counted.cell, 3)} m (extremes exact)"
 
 
 def _plot_rows(event: EventReading, say: UnitSystem, kind: str) -> Rows:

@@ -136,6 +136,8 @@ def _records(assessment: Assessment) -> list[dict[str, Any]]:
             "event": event.name,
             "path": event.record,
             "sha256": event.sha256,
+            "counted_exactly": event.count.exact,
+            "cell_size": event.count.cell or None,
             "summary": event.summary.to_dict() if event.summary else None,
             "provenance": list(event.provenance),
         }

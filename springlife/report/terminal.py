@@ -133,8 +133,18 @@ def _summary(result: Assessment, j: Judgement) -> list[tuple[str, str]]:
         ("stress", f"{case.judge.stress_factor} factor on "
                    f"{'mean and amplitude' if case.judge.curvature_on == 'both' else 'the amplitude'}; "
                    f"residue: {case.judge.residue}"),
+        ("counted", _how_counted(result)),
         ("reliability", result.reliability),
     ]  # fmt: skip
+
+
+def _how_counted(result: Assessment) -> str:
+    """Say whether every cycle was kept as it was."""
+    assert result.duty is not None
+    coarse = [event.name for event in result.duty.events if not event.count.exact]
+    if not coarse:
+        return "every cycle exactly"
+    return f"{', '.join(coarse)}: too many distinct cycles, kept in cells with their mean ends; extremes exact"
 
 
 def _governing(result: Assessment, j: Judgement) -> str:
