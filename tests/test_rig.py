@@ -91,6 +91,16 @@ def test_refused_when_it_would_yield_or_end_at_once(tmp_path: Path) -> None:
     assert {"yields", "below-1e3"} <= codes
 
 
+def test_a_duty_that_is_withheld_is_no_measure(tmp_path: Path) -> None:
+    past = QUIET.replace("cycles = 100 }", 'cycles = 100 }, { low = "5 mm", high = "32 mm", cycles = 1 }')
+    test = rig(load_case(write_case(tmp_path, past, None)), low=0.005, high=0.020)
+    assert [finding.message[:11] for finding in test.findings if finding.code == "past-solid"] == ["in the duty"]
+    assert test.stopped
+    waived = past + '[[waive]]\nfinding = "past-solid"\nby = "T"\nreason = "R"\n'
+    waived += '[[waive]]\nfinding = "yields"\nby = "T"\nreason = "R"\n'
+    assert not rig(load_case(write_case(tmp_path, waived, None)), low=0.005, high=0.020).stopped
+
+
 def test_a_test_longer_than_the_data_is_marked(tmp_path: Path) -> None:
     test = rig(load_case(write_case(tmp_path, QUIET.replace('"100 h"', '"1000000 h"'), None)))
     assert "endurance-scope" in {finding.code for finding in test.findings}

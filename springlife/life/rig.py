@@ -9,7 +9,7 @@ with a Weibull life factor, n = ln(1 - C)/(L^beta ln R) (standard texts on relia
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
 
@@ -176,10 +176,14 @@ def rig(
             f"rig limits {say(low, 'length')} to {say(high, 'length')} give {exact:g} cycles under the case's model; "
             "choose a cycle that does some damage and does not fail at once"
         )
-    seen = settle(_against(result, j, low, high, exact * life_factor, frequency), result.case.input.waive)
+    seen = _against(result, j, low, high, exact * life_factor, frequency)
+    # A duty whose own judgement is withheld is no measure for a test.
+    seen += [
+        replace(finding, message=f"in the duty: {finding.message}") for finding in result.findings if finding.blocks
+    ]
     return RigTest(
         result, low, high, exact, frequency, springs, reliability, confidence, life_factor, weibull_slope,
-        _spread(result, j, low, high), seen,
+        _spread(result, j, low, high), settle(seen, result.case.input.waive),
     )  # fmt: skip
 
 
