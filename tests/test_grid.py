@@ -129,8 +129,8 @@ class TestWhatCellsKeep:
         monkeypatch.setattr(counting, "SEGMENT", 5000)
         found = []
         for loops in (lambda n: stack, lambda n: kernels):
-            for module in ("counting", "grid"):
-                monkeypatch.setattr(f"springlife.duty.{module}.loops", loops)
+            monkeypatch.setattr("springlife.duty.counting.expect", loops)
+            monkeypatch.setattr("springlife.duty.grid.loops", loops)
             found += [count(SIGNALS[signal], most_pairs=500, workers=workers).closed for workers in (1, 2, 3)]
         assert found[0].cell > 0 and all(same_rows(found[0], other) for other in found[1:])
 

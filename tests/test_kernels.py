@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-import builtins
+import subprocess
 import sys
 from collections import Counter
 
@@ -146,29 +146,52 @@ def test_both_fill_the_same_cells(rows, once):
     assert times[0] == number[(low == widest[1]) & (high == widest[2])].sum()
 
 
+@pytest.fixture
+def new_process(monkeypatch):
+    """As if nothing had been counted and nothing loaded."""
+    monkeypatch.setattr(stack, "_counted", 0)
+    monkeypatch.setattr(stack, "_missing", False)
+    monkeypatch.delitem(sys.modules, "springlife.duty.kernels")
+
+
 class TestChoice:
-    def test_short_records_do_not_load_the_compiler(self, monkeypatch):
-        monkeypatch.delitem(sys.modules, "springlife.duty.kernels")
-        assert stack.loops(stack.WORTH_LOADING - 1) is stack
-        assert stack.loops(stack.WORTH_LOADING) is not stack
-
-    def test_a_compiler_already_loaded_is_used(self):
+    def test_compiled_loops_once_loaded_are_used_where_calling_them_pays(self):
         assert stack.loops(stack.WORTH_CALLING) is kernels
-        assert stack.loops(10) is stack
+        assert stack.loops(stack.WORTH_CALLING - 1) is stack
 
+    @pytest.mark.usefixtures("new_process")
+    def test_they_are_loaded_when_enough_has_been_counted(self, monkeypatch):
+        loaded = []
+
+        def load(name):
+            loaded.append(name)
+            sys.modules[name] = kernels
+
+        monkeypatch.setattr(stack, "import_module", load)
+        assert stack.expect(stack.WORTH_LOADING - 5000) is stack and not loaded
+        assert stack.expect(5000) is kernels and loaded == ["springlife.duty.kernels"]
+        stack.expect(stack.WORTH_LOADING)
+        assert len(loaded) == 1
+
+    @pytest.mark.usefixtures("new_process")
     def test_without_a_compiler_numpy_counts(self, monkeypatch):
-        real = builtins.__import__
+        asked = []
 
-        def refuse(name, *args, **kwargs):
-            if name.startswith("numba") or "kernels" in (args[2] or () if len(args) > 2 else ()):
-                raise ImportError("no compiler here")
-            return real(name, *args, **kwargs)
+        def refuse(name):
+            asked.append(name)
+            raise ImportError("no compiler here")
 
-        monkeypatch.setattr(stack, "_failed", False)
-        monkeypatch.delitem(sys.modules, "springlife.duty.kernels")
-        monkeypatch.setattr(builtins, "__import__", refuse)
-        assert stack.loops(10**9) is stack
-        assert stack.loops(10**9) is stack  # and is not asked for again
+        monkeypatch.setattr(stack, "import_module", refuse)
+        assert stack.expect(stack.WORTH_LOADING) is stack
+        assert stack.expect(stack.WORTH_LOADING) is stack
+        assert len(asked) == 1
+
+    def test_a_short_record_does_not_load_it(self):
+        code = (
+            "import sys; from springlife import count; import numpy as np; count(np.arange(1e6) % 7);"
+            "assert 'numba' not in sys.modules"
+        )
+        subprocess.run([sys.executable, "-c", code], check=True)
 
 
 @pytest.mark.parametrize("form", FORMS)
@@ -180,6 +203,6 @@ def test_a_count_does_not_depend_on_its_loops_or_its_workers(form, monkeypatch):
     located = Tally(where=True)
     located.feed(x)
     assert count(x, workers=2) == count(x, workers=5) == located.result() == wanted
-    monkeypatch.setattr(counting, "loops", lambda samples: stack)
+    monkeypatch.setattr(counting, "expect", lambda samples: stack)
     assert count(x) == count(x, workers=2) == wanted
     assert all(np.array_equal(a, b) for a, b in zip(traced(x, "half"), places, strict=True))

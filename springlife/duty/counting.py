@@ -19,7 +19,7 @@ from numpy.typing import ArrayLike, NDArray
 from springlife.duty.algebra import Count, Residue, adjacent, between_gaps, check_residue, recurring
 from springlife.duty.cycles import CycleTable
 from springlife.duty.grid import Kept
-from springlife.duty.stack import Scratch, loops, turning
+from springlife.duty.stack import Scratch, expect, turning
 from springlife.errors import InputError, nearest
 
 __all__ = ["Count", "CycleTable", "Located", "Tally", "count", "traced"]
@@ -139,7 +139,7 @@ class Tally:
             See ``count``; the index counts from the first chunk's first sample.
         """
         values = _row(chunk)
-        run = loops(self._fed + values.size)
+        run = expect(values.size)
         for segment, piece in self._reduced(run, values):
             if piece is None:
                 self._feed_between_gaps(run, segment)
@@ -274,7 +274,7 @@ def traced(points: ArrayLike, residue: Residue = "half") -> tuple[Floats, Floats
     row = _row(points)
     values = _floats(row, 0)
     _check_finite(values, 0, split=True)
-    run = loops(values.size)
+    run = expect(values.size)
     gaps = [-1, *np.flatnonzero(np.isnan(values)).tolist(), values.size]
     closed: list[tuple[Ints, Ints]] = []
 

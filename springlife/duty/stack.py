@@ -9,6 +9,7 @@ the cycles, as unordered pairs, and the residue are always the same.
 from __future__ import annotations
 
 import sys
+from importlib import import_module
 from types import ModuleType
 
 import numpy as np
@@ -19,29 +20,35 @@ Ints = NDArray[np.int64]
 Bools = NDArray[np.bool_]
 
 # Measured; see the manual.
-WORTH_LOADING = 40_000_000  # samples from which loading the compiled loops (0.8 s) is repaid
+WORTH_LOADING = 20_000_000  # samples after which loading the compiled loops (0.7 s) is repaid
 WORTH_CALLING = 2_000  # and from which they are used once loaded
 BLOCK = 32_768  # samples of which all intermediate arrays stay in cache
 PASS_COST, PASS_COST_PER_PEAK = 50, 0.01  # of a pass, in cycles that the plain stack closes in the same time
 
 _COMPILED = "springlife.duty.kernels"
-_failed = False
+_counted = 0
+_missing = False
 
 
 def loops(samples: int) -> ModuleType:
-    """Return the module whose loops suit a record of this many samples: the compiled ones, or this one.
+    """Return the module whose loops suit so many samples: the compiled ones if they are loaded, or this one."""
+    return sys.modules[_COMPILED if samples >= WORTH_CALLING and _COMPILED in sys.modules else __name__]
 
-    Loading the compiler takes longer than counting a short record without it, and it may not be there at all.
+
+def expect(samples: int) -> ModuleType:
+    """Return the module whose loops suit samples that are about to be counted.
+
+    Loading the compiler takes longer than counting a short record without it, so it is loaded once this process
+    has counted so many samples, in one record or in many, that it would have been repaid.
     """
-    global _failed
-    if samples >= (WORTH_CALLING if _COMPILED in sys.modules else WORTH_LOADING) and not _failed:
+    global _counted, _missing
+    _counted += samples
+    if _counted >= WORTH_LOADING and _COMPILED not in sys.modules and not _missing:
         try:
-            from springlife.duty import kernels
+            import_module(_COMPILED)
         except ImportError:
-            _failed = True
-        else:
-            return kernels
-    return sys.modules[__name__]
+            _missing = True
+    return loops(samples)
 
 
 class Scratch:
