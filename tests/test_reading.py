@@ -32,7 +32,7 @@ RIDES = 'record = "rides"\nchannel = "y"\nunit = "mm"'
 
 def test_folder_joined_is_the_one_long_record(tmp_path: Path) -> None:
     pieces(tmp_path, "5 20 8", "16 4 19", "5 9")
-    (tmp_path / "whole.csv").write_text("y\n" + "\n".join("5 20 8 16 4 19 5 9".split()) + "\n")
+    (tmp_path / "whole.csv").write_text("y\n" + "\n".join(["5", "20", "8", "16", "4", "19", "5", "9"]) + "\n")
     joined, whole = duty(tmp_path, RIDES), duty(tmp_path, RIDES.replace("rides", "whole.csv"))
     assert joined.events[0].count == whole.events[0].count
 
