@@ -6,8 +6,7 @@ repeats it. Units stand on every axis.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
-from contextlib import contextmanager
+from collections.abc import Callable
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -15,6 +14,7 @@ import numpy as np
 from springlife.errors import CriterionError
 from springlife.life.assess import model_of
 from springlife.life.damage import Floats
+from springlife.report.style import ACCENT, GREY, INK, PALE, PATTERNS, axes_in_style, tip
 from springlife.strength import endurance
 from springlife.strength.criteria import CRITERIA
 from springlife.units import convert, significant
@@ -25,38 +25,8 @@ if TYPE_CHECKING:
 
     from springlife.life.assess import Assessment, Judgement
 
-# Ink, one accent, greys: dark enough to print, apart in lightness as well as in hue.
-INK, ACCENT, GREY, PALE = "#1d2733", "#a8401c", "#66707a", "#c9ced3"
-PATTERNS = {"goodman": (0, (6, 2)), "gerber": "-", "asme-elliptic": (0, (6, 2, 1, 2)), "sines": (0, (1, 1.6))}
-SIZE = (7.2, 4.6)  # inches: the width of a text column on A4 and letter
-
-STYLE = {
-    "font.family": "DejaVu Sans",
-    "font.size": 9.0,
-    "axes.edgecolor": GREY,
-    "axes.labelcolor": INK,
-    "axes.spines.top": False,
-    "axes.spines.right": False,
-    "text.color": INK,
-    "xtick.color": INK,
-    "ytick.color": INK,
-    "figure.dpi": 130,
-    "svg.hashsalt": "springlife",
-    "svg.fonttype": "path",
-}
-
-
-@contextmanager
-def axes_in_style(size: tuple[float, float] = SIZE) -> Iterator[tuple[Figure, Axes]]:
-    """Make a figure in the house style without pyplot."""
-    import matplotlib
-    from matplotlib.backends.backend_agg import FigureCanvasAgg
-    from matplotlib.figure import Figure
-
-    with matplotlib.rc_context(STYLE):  # type: ignore[arg-type]  # its keys are plain strings here
-        figure = Figure(figsize=size, layout="constrained")
-        FigureCanvasAgg(figure)
-        yield figure, figure.add_subplot()
+TIPPED = 40  # cycle classes that tell their values on hover: those that matter most
+MANY = 1500  # more dots than this become pixels, so that a page stays small
 
 
 def haigh(result: Assessment) -> Figure:
@@ -84,10 +54,16 @@ def haigh(result: Assessment) -> Figure:
         total = j.cycle_damage.sum()
         share = j.cycle_damage / total if 0 < total < np.inf else np.zeros_like(j.cycle_damage)
         # All cycles as fine dots; those that matter again with their share as area.
-        axes.scatter(to(tau_m), to(tau_a), s=4, color=PALE, linewidths=0, zorder=2)
-        seen = share > 1e-4
-        area = 8 + 900 * share[seen]
-        axes.scatter(to(tau_m[seen]), to(tau_a[seen]), s=area, color=ACCENT, alpha=0.55, linewidths=0, zorder=3)
+        axes.scatter(to(tau_m), to(tau_a), s=4, color=PALE, linewidths=0, zorder=2, rasterized=tau_m.size > MANY)
+        weighty = np.argsort(-share, kind="stable")[: int((share > 1e-4).sum())]
+        rest = weighty[TIPPED:]
+        axes.scatter(to(tau_m[rest]), to(tau_a[rest]), s=8 + 900 * share[rest], color=ACCENT, alpha=0.55, linewidths=0,
+                     zorder=3, rasterized=rest.size > MANY)  # fmt: skip
+        for i in weighty[:TIPPED]:
+            dot = axes.scatter(to(tau_m[i]), to(tau_a[i]), s=8 + 900 * share[i], color=ACCENT, alpha=0.55, linewidths=0,
+                               zorder=3)  # fmt: skip
+            stresses = f"{result.say(float(tau_a[i]), 'stress')} about {result.say(float(tau_m[i]), 'stress')}"
+            tip(dot, f"{stresses}: {significant(100 * float(share[i]), 3)} % of the damage")
         top = _criteria_lines(axes, result, j, to)
         pair = endurance.zimmerli(j.spring.shot_peened)
         if result.case.judge.endurance == "zimmerli":
@@ -97,15 +73,17 @@ def haigh(result: Assessment) -> Figure:
                 (float(to(pair.Ssm)), float(to(pair.Ssa))),
                 xytext=(9, 7),
                 textcoords="offset points",
+                bbox={"facecolor": "white", "alpha": 0.8, "linewidth": 0, "pad": 1.0},
+                zorder=6,
             )
         limit = float(to(j.spring.static_limit))
         axes.plot([0, limit], [limit, 0], color=GREY, linewidth=1.0, linestyle=(0, (3, 3)), zorder=1)
         axes.set_xlim(0, 1.08 * max(limit, float(to(j.spring.Ssu))))
         axes.set_ylim(0, 1.25 * max(top, float(to(tau_a.max(initial=0.0)))))
         height = axes.get_ylim()[1]
-        if limit > 0.62 * height:
-            place = (limit - 0.62 * height, 0.62 * height)
-            axes.annotate("yield", place, xytext=(5, 3), textcoords="offset points", color=GREY)
+        if limit > 0.05 * height:
+            place = (limit - 0.05 * height, 0.05 * height)
+            axes.annotate("yield", place, xytext=(-5, 0), textcoords="offset points", color=GREY, ha="right")
         axes.set_xlabel(f"mean shear stress, {unit}")
         axes.set_ylabel(f"alternating shear stress, {unit}")
         axes.legend(loc="upper right", frameon=False)

@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from springlife.report.figures import ACCENT, INK, axes_in_style
+from springlife.report.style import ACCENT, INK, axes_in_style
 from springlife.strength.criteria import criterion
 from springlife.units import convert
 

@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from springlife.report.figures import ACCENT, GREY, INK, axes_in_style
+from springlife.report.style import ACCENT, GREY, INK, axes_in_style, drawable
 from springlife.units import convert
 
 if TYPE_CHECKING:
@@ -70,4 +70,4 @@ def _governing(option: Option) -> tuple[float, float]:
 
 
 def _label(option: Option) -> str:
-    return option.name if len(option.name) <= 40 else option.name[:39] + "…"
+    return drawable(option.name)

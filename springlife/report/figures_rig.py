@@ -8,7 +8,7 @@ import numpy as np
 
 from springlife.errors import CriterionError
 from springlife.life.assess import model_of
-from springlife.report.figures import ACCENT, GREY, INK, PATTERNS, axes_in_style
+from springlife.report.style import ACCENT, GREY, INK, PATTERNS, axes_in_style
 from springlife.strength.criteria import CRITERIA
 from springlife.units import convert
 

@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from springlife.report.figures import ACCENT, GREY, INK, PALE, SIZE, axes_in_style
+from springlife.report.style import ACCENT, GREY, INK, PALE, SIZE, axes_in_style
 from springlife.units import significant
 
 if TYPE_CHECKING:

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import io
+import re
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -31,14 +33,30 @@ def save_figure(figure: Figure, path: str | Path, *, force: bool = False) -> Pat
     """
     import matplotlib
 
-    from springlife.report.figures import STYLE
+    from springlife.report.style import STYLE
 
     path = Path(path)
     if path.suffix.lower() not in METADATA:
         raise InputError(f"{path}: a figure cannot be written as {path.suffix!r}; {nearest(path.suffix, METADATA)}")
 
     def save(place: Path) -> None:
+        if path.suffix.lower() == ".svg":
+            place.write_text(svg_of(figure), encoding="utf-8")
+            return
         with matplotlib.rc_context(STYLE):  # type: ignore[arg-type]  # its keys are plain strings here
             figure.savefig(place, metadata=METADATA[path.suffix.lower()])
 
     return write_file(path, save, force=force)
+
+
+def svg_of(figure: Figure) -> str:
+    """Return a figure as SVG text; what :func:`springlife.report.style.tip` noted is shown on hover."""
+    import matplotlib
+
+    from springlife.report.style import STYLE, TIP
+
+    text = io.StringIO()
+    with matplotlib.rc_context(STYLE):  # type: ignore[arg-type]  # its keys are plain strings here
+        figure.savefig(text, format="svg", metadata=METADATA[".svg"])
+    # The identifier has been escaped as an attribute, which is safe as text too.
+    return re.sub(rf'<g id="{TIP}([^"]*)">', r'<g class="tip"><title>\1</title>', text.getvalue())
