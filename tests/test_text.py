@@ -6,7 +6,7 @@ Expected values are the numbers written into the fixtures; no source beyond that
 from __future__ import annotations
 
 import gzip
-import sys
+import math
 import tracemalloc
 from pathlib import Path
 
@@ -15,12 +15,13 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from springlife.duty.formats import blocks, text
-from springlife.duty.formats.blocks import Columns, Way, parse, ways_for
+from springlife.duty.formats import text
+from springlife.duty.formats.blocks import Columns, parse
 from springlife.duty.record import RecordSpec, open_record
 from springlife.errors import FileError, GapError, InputError
 
-WAYS: list[tuple[str, ...]] = [(), ("arrow",), ("kernel",), ("kernel", "arrow")]
+WAYS = {"cell by cell": math.inf, "Arrow": 0}  # the size below which a file is read cell by cell
+BOTH_WAYS = pytest.mark.parametrize("short", WAYS.values(), ids=WAYS)
 T = [0.0, 0.1, 0.2, 0.3, 0.4, 0.5]
 X = [5.25, 12.0, -6.5, 15.0, 5.0, 10.125]
 PLAIN = "t,travel\n" + "".join(f"{t},{x}\n" for t, x in zip(T, X, strict=True))
@@ -96,13 +97,13 @@ DIALECTS: dict[str, tuple[str | bytes, dict[str, object]]] = {
 }  # fmt: skip
 
 
-@pytest.mark.parametrize("ways", WAYS, ids=" then ".join)
+@BOTH_WAYS
 @pytest.mark.parametrize("block", [40, 1 << 20], ids=["tiny blocks", "one block"])
 @pytest.mark.parametrize("name", DIALECTS)
 def test_every_dialect_gives_the_same_numbers(
-    name: str, ways: tuple[str, ...], block: int, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+    name: str, short: float, block: int, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    monkeypatch.setattr(text, "ways_for", lambda size, columns: ways)
+    monkeypatch.setattr(text, "SHORT", short)
     monkeypatch.setattr(text, "BLOCK", block)
     content, spec = DIALECTS[name]
     np.testing.assert_allclose(read(tmp_path, content, **spec), X, rtol=1e-15)
@@ -120,41 +121,31 @@ def test_every_dialect_gives_the_same_rate(name: str, tmp_path: Path) -> None:
     assert recording.span == pytest.approx(0.5)
 
 
-@pytest.mark.parametrize("clock", ["numbers", "stamps", "zoned stamps"])
-def test_the_way_of_reading_is_chosen_by_length(clock: str, monkeypatch: pytest.MonkeyPatch) -> None:
-    columns = Columns(",", ".", 2, 1, 0, clock)  # type: ignore[arg-type]
-    monkeypatch.delitem(sys.modules, "numba", raising=False)
-    monkeypatch.setattr(blocks, "_asked", 0)
-    assert ways_for(1000, columns) == ()
-    assert ways_for(5_000_000, columns) == ("arrow",)
-    long = ("kernel", "arrow") if clock == "numbers" else ("arrow",)
-    assert ways_for(500_000_000, columns) == long
-    assert ways_for(5_000_000, columns) == long  # loaded by now
-    assert ways_for(1000, columns) == ()
+def test_the_way_of_reading_is_chosen_by_length(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    asked = []
+    monkeypatch.setattr(text, "parse", lambda block, columns: asked.append(block))
+    monkeypatch.setattr(text, "SHORT", len(PLAIN) + 1)
+    read(tmp_path, PLAIN)
+    assert not asked
+    monkeypatch.setattr(text, "SHORT", len(PLAIN))
+    np.testing.assert_allclose(read(tmp_path, PLAIN), X, rtol=1e-15)  # cell by cell, since that way took nothing
+    assert b"".join(asked) == PLAIN.split("\n", 1)[1].encode()
 
 
-def test_the_kernel_alone_takes_what_loggers_write() -> None:
-    block = b"0.5,x,-1.25\r\n1,y, +3 \r\n2e-3,,nan\r\n-0,z,\r\n"
-    values, times = parse(block, Columns(",", ".", 3, 2, 0), ["kernel"]) or ([], None)
-    np.testing.assert_array_equal(values, [-1.25, 3.0, np.nan, np.nan])
-    assert times is not None and times.tolist() == [0.5, 1.0, 0.002, 0.0] and np.signbit(times[3])
+def test_arrow_alone_takes_what_loggers_write() -> None:
+    block = b"0.5,x,-1.25\r\n1,y, +3 \r\n\r\n2e-3,,nan\r\n-0,z,\r\n"
+    values, times = parse(block, Columns(",", ".", 3, 2, 0)) or ([], None)
+    np.testing.assert_array_equal(values, [-1.25, 3.0, np.nan, np.nan, np.nan])
+    assert times is not None and np.signbit(times[4])
+    np.testing.assert_array_equal(times, [0.5, 1.0, np.nan, 0.002, 0.0])
 
 
 @pytest.mark.parametrize(
-    "row", [b"1,2,3\n", b"1\n", b"1,\n2\n", b"1,1_0\n", b"1,0x1\n", b"1,--2\n", b"1,.\n", b"1,1e\n", b"1,inf\n", b"1,'2'\n",
-            b'1,"2"\n', b'"1",2\n', b"1,12345678901234567890\n", b"1,0.1e-30\n", b"1,9007199254740993\n", b"\n", b"1,2\r3\n",
-            b"1,1 2\n", b"1,na\n"],
+    "row", [b"1,2,3\n", b"1\n", b"1,\n2\n", b"1,1_0\n", b"1,0x1\n", b"1,--2\n", b"1,.\n", b"1,1e\n", b"1,'2'\n", b"1,2\r3\n",
+            b'1,2"\n', b'1,"2\n', b"1,1 2\n", b"1,na\n"],
 )  # fmt: skip
-def test_the_kernel_refuses_what_needs_care(row: bytes) -> None:
-    assert parse(b"0,1\n" + row, Columns(",", ".", 2, 1, None), ["kernel"]) is None
-
-
-def test_a_way_that_refuses_what_the_next_one_takes_is_not_asked_again() -> None:
-    ways: list[Way] = ["kernel", "arrow"]
-    columns = Columns(",", ".", 2, 1, None)
-    assert parse(b"0,1.5\n", columns, ways) is not None and ways == ["kernel", "arrow"]
-    assert parse(b"0,off\n", columns, ways) is None and ways == ["kernel", "arrow"]
-    assert parse(b"0,0.12345678901234567\n", columns, ways) is not None and ways == ["arrow"]
+def test_arrow_refuses_what_needs_care(row: bytes) -> None:
+    assert parse(b"0,1\n" + row, Columns(",", ".", 2, 1, None)) is None
 
 
 def test_a_fraction_that_comes_late_still_tells_the_decimal_sign(tmp_path: Path) -> None:
@@ -268,12 +259,12 @@ BROKEN: dict[str, tuple[str | bytes, dict[str, object], type[Exception], list[st
 }  # fmt: skip
 
 
-@pytest.mark.parametrize("ways", WAYS, ids=" then ".join)
+@BOTH_WAYS
 @pytest.mark.parametrize("name", BROKEN)
 def test_every_fault_ends_in_one_sentence(
-    name: str, ways: tuple[str, ...], tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+    name: str, short: float, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    monkeypatch.setattr(text, "ways_for", lambda size, columns: ways)
+    monkeypatch.setattr(text, "SHORT", short)
     content, spec, kind, words = BROKEN[name]
     with pytest.raises(kind) as caught:
         read(tmp_path, content, **spec)
@@ -306,14 +297,14 @@ finite = st.floats(allow_nan=False, allow_infinity=False)
 @given(
     values=st.lists(finite, min_size=2, max_size=30),
     style=st.sampled_from([("{!r}", ","), ("{!r}", "\t"), ("{:.17g}", ";"), ("{:.17e}", ","), ("{:.6g}", ",")]),
-    ways=st.sampled_from(WAYS),
+    short=st.sampled_from(list(WAYS.values())),
     block=st.sampled_from([30, 1 << 20]),
 )
 @settings(max_examples=150, deadline=None)
 def test_written_numbers_come_back_bit_for_bit(
     values: list[float],
     style: tuple[str, str],
-    ways: tuple[str, ...],
+    short: float,
     block: int,
     tmp_path_factory: pytest.TempPathFactory,
 ) -> None:
@@ -322,7 +313,7 @@ def test_written_numbers_come_back_bit_for_bit(
     lines = [f"n{delimiter}x"] + [f"{n}{delimiter}{form.format(value)}" for n, value in enumerate(values)]
     path.write_text("\n".join(lines), encoding="utf-8")
     with pytest.MonkeyPatch.context() as patch:
-        patch.setattr(text, "ways_for", lambda size, columns: ways)
+        patch.setattr(text, "SHORT", short)
         patch.setattr(text, "BLOCK", block)
         read = np.concatenate(list(open_record(RecordSpec(path, channel="x", kind=None)).blocks()))
     expected = np.array([float(form.format(value)) for value in values])
@@ -330,22 +321,36 @@ def test_written_numbers_come_back_bit_for_bit(
 
 
 QUOTED = st.lists(st.text('01"; ', max_size=8), min_size=1, max_size=4)
+ROWS = st.lists(st.sampled_from(["", " ", "\r", "1", '""', ";", "1;", ";2", "1;2", '"1";2', "1;2;3"]), max_size=6)
+
+
+def agree(path: Path, content: str, channel: str) -> None:
+    """Read both ways: the numbers are the same, or the sentence."""
+    path.write_bytes(content.encode())
+    outcomes = []
+    for short in WAYS.values():
+        with pytest.MonkeyPatch.context() as patch:
+            patch.setattr(text, "SHORT", short)
+            try:
+                spec = RecordSpec(path, channel=channel, kind=None, gaps="split")
+                outcomes.append(np.concatenate(list(open_record(spec).blocks())).tolist())
+            except InputError as error:
+                outcomes.append(str(error))
+    assert repr(outcomes[0]) == repr(outcomes[1])
 
 
 @given(
     cells=st.lists(st.text("0123456789.,+-eEnaif_x \"'", max_size=8), min_size=1, max_size=6) | QUOTED,
 )
 @settings(max_examples=200, deadline=None)
-def test_all_ways_of_reading_agree_on_any_cells(cells: list[str], tmp_path_factory: pytest.TempPathFactory) -> None:
-    path = tmp_path_factory.mktemp("any") / "x.csv"
-    path.write_text("n;x\n0;0\n" + "".join(f"1;{cell}\n" for cell in cells), encoding="utf-8")
-    outcomes = []
-    for ways in WAYS:
-        with pytest.MonkeyPatch.context() as patch:
-            patch.setattr(text, "ways_for", lambda size, columns, ways=ways: ways)
-            try:
-                spec = RecordSpec(path, channel="x", kind=None, gaps="split")
-                outcomes.append(np.concatenate(list(open_record(spec).blocks())).tolist())
-            except InputError as error:
-                outcomes.append(str(error))
-    assert len({repr(outcome) for outcome in outcomes}) == 1, outcomes
+def test_both_ways_of_reading_agree_on_any_cells(cells: list[str], tmp_path_factory: pytest.TempPathFactory) -> None:
+    rows = "".join(f"1;{cell}\n" for cell in cells)
+    agree(tmp_path_factory.mktemp("any") / "x.csv", f"n;x\n0;0\n{rows}", "x")
+
+
+@given(first=st.sampled_from(["x\n0\n0.5\n", "n;x\n0;0\n0;0.5\n"]), rows=ROWS)
+@settings(max_examples=200, deadline=None)
+def test_both_ways_of_reading_agree_on_blank_and_ragged_rows(
+    first: str, rows: list[str], tmp_path_factory: pytest.TempPathFactory
+) -> None:
+    agree(tmp_path_factory.mktemp("rows") / "x.csv", first + "".join(f"{row}\n" for row in [*rows, ""]), "x")

@@ -1,8 +1,8 @@
 """Text tables (CSV as loggers write it), read in blocks of whole rows.
 
-There is one set of rules, those of the reader that goes cell by cell. Larger files go through faster ways,
-which take a subset of those rules with the same values; a block that they refuse is read again with care, and
-either is fine or yields the sentence that says what is wrong, and where.
+There is one set of rules, those of the reader that goes cell by cell. Longer files go through Arrow, which takes
+a subset of those rules with the same values; a block that it refuses is read again with care, and either is fine or
+yields the sentence that says what is wrong, and where.
 """
 
 from __future__ import annotations
@@ -19,7 +19,7 @@ from typing import IO, TYPE_CHECKING, Literal, cast
 
 import numpy as np
 
-from springlife.duty.formats.blocks import Columns, Parsed, ahead, parse, ways_for
+from springlife.duty.formats.blocks import Columns, Parsed, ahead, parse
 from springlife.duty.formats.dates import AMBIGUOUS, STAMP, stamps_of
 from springlife.duty.formats.table import Chunk, Floats, Stamps, Table, choose_pair
 from springlife.duty.sniff import HEAD, NUMBER, Layout, cells_of, encoding_of, is_missing, layout_of
@@ -29,6 +29,7 @@ if TYPE_CHECKING:
     from springlife.duty.record import RecordSpec
 
 BLOCK = 1 << 20  # bytes read at a time: what fits a core's cache is read fastest
+SHORT = 1 << 20  # bytes; a shorter file is read cell by cell before Arrow has loaded
 LONGEST = 1 << 22  # bytes of one row
 GZIP, ZSTANDARD = b"\x1f\x8b", b"\x28\xb5\x2f\xfd"
 OPEN_QUOTE = "a quoted cell is not closed in its row"
@@ -104,11 +105,10 @@ class _Reader:
             row += block.count(b"\n")
 
     def _parsed(self) -> Iterator[tuple[bytes, Parsed | None]]:
-        """Yield each block of rows with what a fast way made of it, None where care is needed."""
-        ways = list(ways_for(self.path.stat().st_size, self.columns))
-        if not ways:
+        """Yield each block of rows with what Arrow made of it, None where care is needed."""
+        if self.path.stat().st_size < SHORT:
             return ((block, None) for block in self._rows())
-        return ahead(lambda block: parse(block, self.columns, ways), self._rows())
+        return ahead(lambda block: parse(block, self.columns), self._rows())
 
     def _rows(self) -> Iterator[bytes]:
         """Yield the blocks without what stands above the first row of numbers."""
