@@ -70,7 +70,8 @@ def _parser() -> argparse.ArgumentParser:
     _compare_command(commands)
     _count_command(commands)
     _scatter_command(commands)
-    _case_command(commands, "surge", _surge, "judge every coil with the wave in the wire, beside the static judgement")
+    text = "judge every coil with the wave in the wire, beside the static judgement"
+    _figure_options(_case_command(commands, "surge", _surge, text), "stress over a cam's speeds, or along the coils,")
     grades = commands.add_parser("grades", help="list the wire grades with their strengths", epilog=CAUTION)
     grades.add_argument("grade", nargs="?", help="one grade in full")
     grades.add_argument("--file", metavar="GRADES.toml", help="a grades file of your own")
@@ -279,6 +280,10 @@ def _surge(arguments: argparse.Namespace) -> int:
     from springlife.life.surge import surge
 
     result = surge(arguments.case)
+    if arguments.figure:
+        from springlife.report.figures_surge import cam_speeds, coil_stress
+
+        _save(cam_speeds(result) if result.cams else coil_stress(result), arguments)
     if arguments.json:
         _print_json(result.to_dict())
     else:

@@ -21,6 +21,14 @@ def test_latch_passes_by_static_stress_and_not_with_its_own_mass(capsys: pytest.
     assert main(["surge", case]) == 1
 
 
+def test_surge_figures_of_a_cam_and_of_coils(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    for name in ("dosing-pump", "latch-release"):
+        figure = tmp_path / f"{name}.svg"
+        assert main(["surge", str(CASES / name / "case.toml"), "--figure", str(figure)]) in {0, 1}
+        assert figure.stat().st_size > 10_000
+    assert "plunger cam" in capsys.readouterr().out
+
+
 def test_seat_meets_its_target_peened_and_falls_short_unpeened(capsys: pytest.CaptureFixture[str]) -> None:
     assert main(["compare", str(CASES / "forwarder-seat" / "case.toml")]) == 0
     verdicts = next(line for line in capsys.readouterr().out.splitlines() if line.startswith("verdict"))
