@@ -4,13 +4,16 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+import numpy as np
+
 from springlife.report.style import ACCENT, GREY, INK, axes_in_style
 from springlife.units import convert
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
-    from springlife.life.size import Candidate, Sizing
+    from springlife.life.size import Sizing
+    from springlife.life.size_table import Candidate
 
 
 DRAWN = 2000  # points of the cloud at most, every so-manieth of the grid

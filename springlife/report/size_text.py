@@ -8,9 +8,10 @@ from springlife.report.terminal import console_for_output, print_rows, print_tab
 from springlife.units import significant
 
 if TYPE_CHECKING:
-    from springlife.life.size import Candidate, Sizing
+    from springlife.life.size import Sizing
+    from springlife.life.size_table import Candidate
 
-SHOWN = 10
+SHOWN, LEFT_OUT = 10, 4
 
 
 def print_sizing(result: Sizing, caution: str) -> None:
@@ -30,19 +31,28 @@ def print_sizing(result: Sizing, caution: str) -> None:
         stroke = (
             f"{significant(result.stroke_factor, 3)} times the drawn spring's ({result.stroke_governed_by} governs)"
         )
-    print_rows(console, [("goal", f"{goal} first; held by {result.settings.hold}"), ("greatest stroke", stroke)])
+    rows = [("goal", f"{goal} first"), ("held", result.held), ("greatest stroke", stroke)]
+    if result.failures:
+        rows.append(("fail", ", ".join(f"{name} {number}" for name, number in result.failures.items())))
+    rows += [("left out", reason) for reason in result.excluded[:LEFT_OUT]]
+    if result.found:
+        warned = ", ".join(result.found[0].warnings)
+        rows.append(("the best", f"judged on its own meets the target; warnings: {warned or 'none'}"))
+    if result.settings.working_frequency is None:
+        rows.append(("surge", "not checked: [size] gives no working_frequency"))
+    print_rows(console, rows)
     units = say.units
     heads = ("wire", "d " + units["length"], "D " + units["length"], "coils", "L0 " + units["length"],
              "rate " + units["rate"], "mass " + units["mass"], "cost", "life")  # fmt: skip
     if result.found:
-        rows = [_row(result, candidate) for candidate in result.found[:SHOWN]]
-        print_table(console, f"Meet everything ({len(rows)} shown)", heads, rows)
+        shown = [_row(result, candidate) for candidate in result.found[:SHOWN]]
+        print_table(console, f"Meet everything ({len(shown)} shown)", heads, shown)
     if result.misses:
-        rows = [
+        misses = [
             (*_row(result, one)[:-1], "; ".join(f"{name} {100 * ratio:.1f} %" for name, ratio in one.failed.items()))
             for one in result.misses
         ]
-        print_table(console, "Near misses, by how much of what is asked they reach", (*heads[:-1], "fails on"), rows)
+        print_table(console, "Near misses, by how much of what is asked they reach", (*heads[:-1], "fails on"), misses)
     console.print()
     console.print(Text(caution, style="italic"))
 
