@@ -94,5 +94,5 @@ def cam_speeds(result: SurgeResult, cam: int = 0) -> Figure:
             f"speed of {sweep.name}, turns a minute; numbers: harmonic that meets the first surge frequency"
         )
         axes.set_ylabel(f"shear stress, {unit}")
-        axes.legend(frameon=False, loc="center left")
+        axes.legend(frameon=False, loc="lower left", bbox_to_anchor=(0.02, 0.18))
     return figure
