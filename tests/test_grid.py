@@ -128,9 +128,9 @@ class TestWhatCellsKeep:
     def test_loops_and_workers_give_the_same_bytes(self, signal, monkeypatch):
         monkeypatch.setattr(counting, "SEGMENT", 5000)
         found = []
-        for loops in (lambda n: stack, lambda n: kernels):
-            monkeypatch.setattr("springlife.duty.counting.expect", loops)
-            monkeypatch.setattr("springlife.duty.grid.loops", loops)
+        for loops in (stack, kernels):
+            monkeypatch.setattr("springlife.duty.counting.expect", lambda samples, loops=loops: loops)
+            monkeypatch.setattr("springlife.duty.grid.loops", lambda loops=loops: loops)
             found += [count(SIGNALS[signal], most_pairs=500, workers=workers).closed for workers in (1, 2, 3)]
         assert found[0].cell > 0 and all(same_rows(found[0], other) for other in found[1:])
 

@@ -339,7 +339,7 @@ def between_gaps(parts: list[Floats]) -> Floats:
 def join(first: Floats, then: Floats, gate: float) -> tuple[Cycles, Floats]:
     """Count on from a residue: what closes, and the residue after it."""
     open_ = np.concatenate([first, then])  # room for all
-    low, high, top = loops(then.size).push(open_, first.size, then)
+    low, high, top = loops().push(open_, first.size, then)
     return joined(pairs(low, high), gate=gate), _fixed(open_[:top])
 
 

@@ -7,10 +7,12 @@ depends on the cycles alone, not on the order in which they came.
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 from numpy.typing import NDArray
 
-from springlife.duty.cycles import NONE, SIDE, Cycles, joined, pairs, width
+from springlife.duty.cycles import SIDE, Cycles, joined, pairs, width
 from springlife.duty.stack import loops
 
 Floats = NDArray[np.float64]
@@ -34,8 +36,8 @@ class Kept:
     def __init__(self, most: int, gate: float) -> None:
         """Start with nothing."""
         self._most, self._gate = most, gate
-        self._rows = NONE  # distinct pairs
-        self._low, self._high, self._size = np.empty(0), np.empty(0), 0  # what came since, as it came
+        self._low, self._high, self._size = np.empty(0), np.empty(0), 0  # as they came
+        self._distinct: Any = None  # what came before, equal pairs joined
         self._grid: Grid | None = None
 
     def add(self, low: Floats, high: Floats) -> None:
@@ -63,26 +65,27 @@ class Kept:
                 wider[: self._size] = getattr(self, name)[: self._size]
                 setattr(self, name, wider)
 
-    def _fresh(self) -> Cycles:
-        return pairs(self._low[: self._size], self._high[: self._size])
-
     def _settle(self) -> None:
         """Join equal pairs, or go over to cells."""
-        bag = joined(self._rows, self._fresh())
-        rows = loops(len(bag)).group(bag.low, bag.high, bag.number, self._most)
-        if rows is None:
-            self._grid = Grid(bag)
-        self._rows = Cycles(*rows) if rows else NONE
+        self._distinct = self._distinct or loops().Distinct(self._most)
+        low, high = self._low[: self._size], self._high[: self._size]
+        taken = self._distinct.add(low, high)
+        if taken < self._size:
+            self._grid = Grid(joined(Cycles(*self._distinct.rows()), pairs(low[taken:], high[taken:])))
+            self._low = self._high = np.empty(0)
+            self._distinct = None
         self._size = 0
 
     def result(self) -> Cycles:
         """Return what has been added."""
-        if not self._grid and len(self._rows) + self._size > self._most:
+        if self._distinct or self._size > self._most:
             self._settle()
         if self._grid:
             return self._grid.cycles()
-        given = joined(self._rows, self._fresh())
-        self._low, self._high = self._low[: self._size], self._high[: self._size]
+        if self._distinct:
+            return Cycles(*self._distinct.rows())
+        given = pairs(self._low[: self._size], self._high[: self._size])
+        self._low, self._high = given.low, given.high  # full, so that more goes elsewhere
         return given
 
 
@@ -107,7 +110,7 @@ class Grid:
     def add(self, bag: Cycles) -> None:
         """Add cycles."""
         self._cover(bag.low.min(), bag.high.max())
-        loops(len(bag)).fold(
+        loops().fold(
             bag.low, bag.high, bag.number, self._width, self._first, self._width / self._step, self._cells,
             self._largest, self._times,
         )  # fmt: skip

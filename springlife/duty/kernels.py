@@ -244,48 +244,50 @@ def trace(values: Floats, order: Ints) -> tuple[Ints, Ints, Ints]:
     return low[:m], high[:m], rest[:t]
 
 
-def _dense(number: Ints) -> Ints:
-    """Return the number that all share, or all numbers."""
-    return number[:1] if number.strides == (0,) else number
-
-
-@_compiled(_numba.int64(_given, _given, _whole, _places, _floats, _floats, _ints))
-def _group(low, high, number, places, rows_low, rows_high, rows_number):  # type: ignore[no-untyped-def]
+@_compiled(_sizes(_given, _given, _places, _floats, _floats, _ints, _numba.int64))
+def _insert(low, high, places, rows_low, rows_high, rows_number, used):  # type: ignore[no-untyped-def]
     """Hash table with open addressing: ``places`` holds row numbers, -1 where free."""
-    each = 1 if number.size == low.size else 0
-    used, mask = 0, np.uint64(places.size - 1)
+    mask, pair = np.uint64(places.size - 1), np.empty(2)
     mix = np.uint64(0x9E3779B97F4A7C15)  # 2**64 over the golden ratio: spreads neighbouring bit patterns
-    one = np.empty(2)
-    bits = one.view(np.uint64)
+    bits = pair.view(np.uint64)
     for i in range(low.size):
         a, b = low[i] + 0.0, high[i] + 0.0  # -0.0 is 0.0
-        one[0], one[1] = a, b
+        pair[0], pair[1] = a, b
         key = (bits[0] * mix ^ bits[1]) * mix
         place = ((key ^ key >> np.uint64(32)) * mix >> np.uint64(32)) & mask
-        while places[place] >= 0:
-            row = places[place]
-            if rows_low[row] == a and rows_high[row] == b:
-                break
-            place = (place + _one) & mask
         row = places[place]
+        while row >= 0 and (rows_low[row] != a or rows_high[row] != b):
+            place = (place + _one) & mask
+            row = places[place]
         if row < 0:
             if used == rows_low.size:
-                return -1
+                return i, used
             row = used
             places[place] = row
             rows_low[row], rows_high[row], rows_number[row] = a, b, 0
             used += 1
-        rows_number[row] += number[each * i]
-    return used
+        rows_number[row] += 1
+    return low.size, used
 
 
-def group(low: Floats, high: Floats, number: Ints, most: int) -> tuple[Floats, Floats, Ints] | None:
-    """Join equal pairs; see ``stack.group``."""
-    room = min(most, low.size)
-    places = np.full(1 << (2 * room).bit_length(), -1, dtype=np.int32)
-    rows = np.empty(room), np.empty(room), np.empty(room, dtype=np.int64)
-    used = _group(low, high, _dense(number), places, *rows)
-    return None if used < 0 else (rows[0][:used], rows[1][:used], rows[2][:used])
+class Distinct:
+    """Pairs with their numbers, equal ones joined; see ``stack.Distinct``."""
+
+    def __init__(self, most: int) -> None:
+        """Start empty, with room for all."""
+        self._places = np.full(1 << (2 * most).bit_length(), -1, dtype=np.int32)
+        self._room = np.empty(most), np.empty(most), np.empty(most, dtype=np.int64)
+        self._used = 0
+
+    def add(self, low: Floats, high: Floats) -> int:
+        """Add cycles, one each, and return how many of them, from the first, found a place."""
+        taken, self._used = _insert(low, high, self._places, *self._room, self._used)
+        return int(taken)
+
+    def rows(self) -> tuple[Floats, Floats, Ints]:
+        """Return low, high and number of the pairs, in any order."""
+        low, high, number = self._room
+        return low[: self._used].copy(), high[: self._used].copy(), number[: self._used].copy()
 
 
 @_compiled(_numba.void(_given, _given, _whole, *[_numba.float64] * 3, _cells, _floats, _ints))
@@ -320,4 +322,4 @@ def fold(
     times: Ints,
 ) -> None:
     """Add cycles to cells; see ``stack.fold``."""
-    _fold(low, high, _dense(number), 1 / width, first, fine, cells, largest, times)
+    _fold(low, high, number[:1] if number.strides == (0,) else number, 1 / width, first, fine, cells, largest, times)

@@ -21,7 +21,6 @@ Bools = NDArray[np.bool_]
 
 # Measured; see the manual.
 WORTH_LOADING = 20_000_000  # samples after which loading the compiled loops (0.7 s) is repaid
-WORTH_CALLING = 2_000  # and from which they are used once loaded
 BLOCK = 32_768  # samples of which all intermediate arrays stay in cache
 PASS_COST, PASS_COST_PER_PEAK = 50, 0.01  # of a pass, in cycles that the plain stack closes in the same time
 
@@ -30,13 +29,13 @@ _counted = 0
 _missing = False
 
 
-def loops(samples: int) -> ModuleType:
-    """Return the module whose loops suit so many samples: the compiled ones if they are loaded, or this one."""
-    return sys.modules[_COMPILED if samples >= WORTH_CALLING and _COMPILED in sys.modules else __name__]
+def loops() -> ModuleType:
+    """Return the module whose loops to use: the compiled ones once they are loaded, or this one."""
+    return sys.modules.get(_COMPILED, sys.modules[__name__])
 
 
 def expect(samples: int) -> ModuleType:
-    """Return the module whose loops suit samples that are about to be counted.
+    """Return the module whose loops to use for samples that are about to be counted.
 
     Loading the compiler takes longer than counting a short record without it, so it is loaded once this process
     has counted so many samples, in one record or in many, that it would have been repaid.
@@ -48,7 +47,7 @@ def expect(samples: int) -> ModuleType:
             import_module(_COMPILED)
         except ImportError:
             _missing = True
-    return loops(samples)
+    return loops()
 
 
 class Scratch:
@@ -240,12 +239,35 @@ def groups(low: Floats, high: Floats) -> tuple[NDArray[np.intp], NDArray[np.intp
     return by, np.flatnonzero(new)
 
 
-def group(low: Floats, high: Floats, number: Ints, most: int) -> tuple[Floats, Floats, Ints] | None:
-    """Join equal pairs and add up their numbers, in any order; None when there are more than ``most`` pairs."""
-    by, starts = groups(low, high)
-    if starts.size > most:
-        return None
-    return low[by][starts] + 0.0, high[by][starts] + 0.0, np.add.reduceat(number[by], starts)  # -0.0 is 0.0
+class Distinct:
+    """Pairs with their numbers, equal ones joined, as long as they are not too many.
+
+    Parameters
+    ----------
+    most : int
+        Distinct pairs that are kept.
+    """
+
+    def __init__(self, most: int) -> None:
+        """Start empty."""
+        self._most = most
+        self._rows = np.empty(0), np.empty(0), np.empty(0, dtype=np.int64)
+
+    def add(self, low: Floats, high: Floats) -> int:
+        """Add cycles, one each, and return how many of them, from the first, found a place."""
+        low, high = (np.concatenate([rows, new]) for rows, new in zip(self._rows, (low, high), strict=False))
+        number = np.ones(low.size, dtype=np.int64)
+        number[: self._rows[2].size] = self._rows[2]
+        by, starts = groups(low, high)
+        if starts.size > self._most:
+            return 0
+        added = low.size - self._rows[0].size
+        self._rows = low[by][starts] + 0.0, high[by][starts] + 0.0, np.add.reduceat(number[by], starts)  # no -0.0
+        return added
+
+    def rows(self) -> tuple[Floats, Floats, Ints]:
+        """Return low, high and number of the pairs, in any order."""
+        return self._rows
 
 
 def fold(

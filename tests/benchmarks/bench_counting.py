@@ -131,7 +131,7 @@ def compile_c(folder: str) -> Callable[..., int] | None:
 def by_numpy(x: np.ndarray) -> None:
     """Count without the compiler."""
     chosen = counting.expect, grid.loops
-    counting.expect = grid.loops = lambda samples: stack
+    counting.expect, grid.loops = lambda samples: stack, lambda: stack
     try:
         count(x)
     finally:
