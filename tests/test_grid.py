@@ -119,7 +119,8 @@ class TestWhatCellsKeep:
         assert damage(cells, slope) == pytest.approx(damage(exact, slope), rel=bound)
 
     def test_a_cell_takes_nothing_away_from_tiny_ranges(self):
-        grid = Grid(pairs(np.array([0.0]), np.array([1000.0])))
+        grid = Grid(0, 1000)
+        grid.add(pairs(np.array([0.0]), np.array([1000.0])))
         grid.add(pairs(np.array([5.0]), np.nextafter(np.array([5.0]), 6)))
         found = grid.cycles()
         assert (found.high > found.low).all() and found.number.sum() == 2

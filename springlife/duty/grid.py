@@ -12,7 +12,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from springlife.duty.cycles import SIDE, Cycles, joined, pairs, width
+from springlife.duty.cycles import SIDE, Cycles, pairs, width
 from springlife.duty.stack import loops
 
 Floats = NDArray[np.float64]
@@ -71,7 +71,10 @@ class Kept:
         low, high = self._low[: self._size], self._high[: self._size]
         taken = self._distinct.add(low, high)
         if taken < self._size:
-            self._grid = Grid(joined(Cycles(*self._distinct.rows()), pairs(low[taken:], high[taken:])))
+            parts = [bag for bag in (Cycles(*self._distinct.rows()), pairs(low[taken:], high[taken:])) if len(bag)]
+            self._grid = Grid(min(bag.low.min() for bag in parts), max(bag.high.max() for bag in parts))
+            for bag in parts:
+                self._grid.add(bag)
             self._low = self._high = np.empty(0)
             self._distinct = None
         self._size = 0
@@ -83,7 +86,7 @@ class Kept:
         if self._grid:
             return self._grid.cycles()
         if self._distinct:
-            return Cycles(*self._distinct.rows())
+            return Cycles(*(column.copy() for column in self._distinct.rows()))
         given = pairs(self._low[: self._size], self._high[: self._size])
         self._low, self._high = given.low, given.high  # full, so that more goes elsewhere
         return given
@@ -92,14 +95,13 @@ class Kept:
 class Grid:
     """Cells of low and high, with the cycle of the largest range kept exactly beside them."""
 
-    def __init__(self, bag: Cycles) -> None:
-        """Start with some cycles; their range sets the steps in which means are kept."""
-        self._lowest, self._highest = bag.low.min(), bag.high.max()
+    def __init__(self, low: float, high: float) -> None:
+        """Cover the range of the first cycles, which sets the steps in which means are kept."""
+        self._lowest, self._highest = float(low), float(high)
         self._lay_out(0.0)
         self._step = self._width / FINE
         self._cells = np.zeros((SIDE, SIDE, 3), dtype=np.int64)
         self._largest, self._times = np.zeros(2), np.zeros(1, dtype=np.int64)
-        self.add(bag)
 
     def _lay_out(self, least: float) -> None:
         """Choose the width of cells, and the first of them so that the range can grow on both sides."""
@@ -117,7 +119,7 @@ class Grid:
 
     def _cover(self, low: float, high: float) -> None:
         """Make room for a wider range."""
-        self._lowest, self._highest = min(low, self._lowest), max(high, self._highest)
+        self._lowest, self._highest = float(min(low, self._lowest)), float(max(high, self._highest))
         if self._lowest // self._width >= self._first and self._highest // self._width < self._first + SIDE:
             return
         was, first, old = self._width, self._first, self._cells

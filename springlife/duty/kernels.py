@@ -285,9 +285,9 @@ class Distinct:
         return int(taken)
 
     def rows(self) -> tuple[Floats, Floats, Ints]:
-        """Return low, high and number of the pairs, in any order."""
+        """Return low, high and number of the pairs, in any order; as they are until more is added."""
         low, high, number = self._room
-        return low[: self._used].copy(), high[: self._used].copy(), number[: self._used].copy()
+        return low[: self._used], high[: self._used], number[: self._used]
 
 
 @_compiled(_numba.void(_given, _given, _whole, *[_numba.float64] * 3, _cells, _floats, _ints))

@@ -266,7 +266,7 @@ class Distinct:
         return added
 
     def rows(self) -> tuple[Floats, Floats, Ints]:
-        """Return low, high and number of the pairs, in any order."""
+        """Return low, high and number of the pairs, in any order; as they are until more is added."""
         return self._rows
 
 
