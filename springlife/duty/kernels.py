@@ -88,7 +88,7 @@ def _turns(b, rising, up, out):  # type: ignore[no-untyped-def]
 
 @_compiled()
 def _peel(p, n, peak, low, high, m):  # type: ignore[no-untyped-def]
-    """Close every pair of p[:n] that its neighbours span, the right one strictly, so that no two pairs touch.
+    """Close pairs of p[:n] that their neighbours span, none of which touch; see ``stack``.
 
     ``peak`` tells whether p[0] is one. Returns how many points are left, in place, and the cycles so far.
     """
@@ -97,7 +97,7 @@ def _peel(p, n, peak, low, high, m):  # type: ignore[no-untyped-def]
     i, kept, was = _one, _one, False
     a, b, c = p[0], p[1], p[2]
     if peak:  # one step, so that b is a peak below
-        was = (c <= a) & (p[3] < b)
+        was = (c < a) & (p[3] < b)
         low[m], high[m] = b, c
         m += np.uint64(was)
         kept += np.uint64(not was)
@@ -105,7 +105,7 @@ def _peel(p, n, peak, low, high, m):  # type: ignore[no-untyped-def]
     lifted = c >= a
     while i + _three < n:
         d, e = p[i + _two], p[i + _three]
-        higher = d > b
+        higher = d >= b
         fall = higher & lifted
         low[m], high[m] = c, b
         m += np.uint64(fall)

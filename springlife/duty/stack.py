@@ -22,7 +22,7 @@ Bools = NDArray[np.bool_]
 # Measured; see the manual.
 WORTH_LOADING = 20_000_000  # samples after which loading the compiled loops (0.7 s) is repaid
 BLOCK = 32_768  # samples of which all intermediate arrays stay in cache
-PASS_COST, PASS_COST_PER_PEAK = 50, 0.01  # of a pass, in cycles that the plain stack closes in the same time
+PASS_COST, PASS_COST_PER_PEAK = 20, 0.005  # of a pass, in cycles that the plain stack closes in the same time
 
 _COMPILED = "springlife.duty.kernels"
 _counted = 0
@@ -102,16 +102,16 @@ def reduce(x: Floats, scratch: Scratch | None = None) -> tuple[Floats, Floats, F
 def _peel(points: Floats) -> tuple[Floats, Floats, Floats]:
     """Close the pairs that both neighbours span, pass by pass while it pays.
 
-    With valleys V and peaks P in turn (V0 P0 V1 P1 ...), the fall from P[i] to V[i + 1] is spanned when the next peak
-    is higher and the last valley was not, the rise from V[i] to P[i] when the next valley is lower and the last
-    peak was not. No point can be in two such pairs.
+    With valleys V and peaks P in turn (V0 P0 V1 P1 ...), the fall from P[i] to V[i + 1] is closed when neither the
+    next peak nor its valley is lower than the one before, the rise from V[i] to P[i] when both its peak and the next
+    valley are lower. So no point is in two pairs, and what spans a pair is only replaced by what spans more.
     """
     falls = points.size > 1 and points[0] > points[1]
     valleys = np.concatenate([[np.inf], points[1::2]]) if falls else points[0::2]  # inf spans nothing
     peaks = points[0::2] if falls else points[1::2]
     low, high = [np.empty(0)], [np.empty(0)]
     while peaks.size > 1:
-        higher, lifted = peaks[1:] > peaks[:-1], valleys[1:] >= valleys[:-1]
+        higher, lifted = peaks[1:] >= peaks[:-1], valleys[1:] >= valleys[:-1]
         n, m = higher.size, lifted.size - 1
         fall, rise = np.zeros(peaks.size, dtype=np.bool_), np.zeros(peaks.size, dtype=np.bool_)
         np.logical_and(higher, lifted[:n], out=fall[:n])

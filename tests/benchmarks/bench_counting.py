@@ -60,11 +60,11 @@ static u peel(f *p, u n, int peak, f *low, f *high, u *cycles) {
   if (n < 5) return n;
   u i = 1, kept = 1, m = *cycles; int was = 0; f a = p[0], b = p[1], c = p[2];
   if (peak) {
-    was = (c <= a) & (p[3] < b); low[m] = b; high[m] = c; m += was; kept += !was; i = 2; a = b; b = c; c = p[3];
+    was = (c < a) & (p[3] < b); low[m] = b; high[m] = c; m += was; kept += !was; i = 2; a = b; b = c; c = p[3];
   }
   int lifted = c >= a;
   for (; i + 3 < n; i += 2) {
-    f d = p[i + 2], e = p[i + 3]; int higher = d > b, fall = higher & lifted;
+    f d = p[i + 2], e = p[i + 3]; int higher = d >= b, fall = higher & lifted;
     low[m] = c; high[m] = b; m += fall; p[kept] = b; kept += !(fall | was);
     lifted = e >= c; was = !(higher | lifted);
     low[m] = c; high[m] = d; m += was; p[kept] = c; kept += !(was | fall);
