@@ -59,4 +59,10 @@ def svg_of(figure: Figure) -> str:
     with matplotlib.rc_context(STYLE):  # type: ignore[arg-type]  # its keys are plain strings here
         figure.savefig(text, format="svg", metadata=METADATA[".svg"])
     # The identifier has been escaped as an attribute, which is safe as text too.
-    return re.sub(rf'<g id="{TIP}([^"]*)">', r'<g class="tip"><title>\1</title>', text.getvalue())
+    svg = re.sub(rf'<g id="{TIP}([^"]*)">', r'<g class="tip"><title>\1</title>', text.getvalue())
+    return re.sub(r'(?<= d=")[^"]*', _rounded, svg)
+
+
+def _rounded(path: re.Match[str]) -> str:
+    """Round a path to hundredths of a point: nobody sees the rest, and a page stays small."""
+    return re.sub(r"-?\d+\.\d{3,}", lambda number: f"{float(number[0]):.2f}".rstrip("0").rstrip("."), path[0])
