@@ -247,7 +247,16 @@ def _save(figure: Any, arguments: argparse.Namespace) -> None:
 def _print_json(data: Any) -> None:
     import json
 
-    print(json.dumps(data, indent=2, allow_nan=False, ensure_ascii=False, default=str))
+    print(json.dumps(_finite(data), indent=2, allow_nan=False, ensure_ascii=False, default=str))
+
+
+def _finite(data: Any) -> Any:
+    """JSON has no infinity: a number without end is null."""
+    if isinstance(data, dict):
+        return {key: _finite(value) for key, value in data.items()}
+    if isinstance(data, (list, tuple)):
+        return [_finite(value) for value in data]
+    return None if isinstance(data, float) and data - data != 0 else data
 
 
 def _assess(arguments: argparse.Namespace) -> int:

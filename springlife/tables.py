@@ -3,11 +3,28 @@
 from __future__ import annotations
 
 import math
+import tomllib
 from dataclasses import dataclass
 from typing import Any
 
 from springlife.errors import InputError, nearest
 from springlife.units import parse
+
+
+def parse_toml(text: str, where: str) -> dict[str, Any]:
+    """Return a TOML text's tables; ``where`` names the file.
+
+    Raises
+    ------
+    InputError
+        Not TOML, nested too deeply, or a number of thousands of digits.
+    """
+    try:
+        return tomllib.loads(text)
+    except RecursionError as error:
+        raise InputError(f"{where}: not usable TOML: tables or lists are nested too deeply; flatten them") from error
+    except ValueError as error:  # TOMLDecodeError is one; so is a whole number of too many digits
+        raise InputError(f"{where}: not valid TOML: {str(error).split('; use sys')[0]}") from error
 
 
 @dataclass(frozen=True)

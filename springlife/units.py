@@ -33,6 +33,8 @@ KINDS: dict[str, tuple[str, str]] = {
     "number": ("", "1.5"),
 }
 
+# Sizes in SI outside which nothing of a spring lies; what is refused here overflows nowhere else.
+SMALLEST, GREATEST = 1e-15, 1e15
 _NUMBER = r"[+-]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][+-]?\d+)?"
 _QUANTITY = re.compile(rf"\s*(?P<number>{_NUMBER})(?:\s*/\s*(?P<divisor>\d+))?\s*(?P<unit>[^\d\s].*?)?\s*")
 # Units are words, products, quotients and small whole powers: nothing that could cost time to evaluate.
@@ -115,7 +117,8 @@ def split(text: str) -> tuple[float, str]:
     if match["divisor"]:
         if int(match["divisor"]) == 0:
             raise InputError(f"{text!r} divides by zero")
-        number /= int(match["divisor"])
+        divisor = float(match["divisor"])
+        number = number / divisor if math.isfinite(divisor) else math.inf
     if not math.isfinite(number):
         raise InputError(f"{text!r} is not finite")
     return number, (match["unit"] or "").strip()
@@ -145,7 +148,10 @@ def parse(text: str, kind: str) -> float:
     if not unit:
         raise InputError(f"{text!r} has no unit; write a {kind} such as {example!r}")
     scale, offset = factor(unit, kind)
-    return number * scale + offset
+    value = number * scale + offset
+    if value and not SMALLEST <= abs(value) <= GREATEST:
+        raise InputError(f"{text!r} is beyond any {kind} of a spring; check its digits and unit")
+    return value
 
 
 def convert(value: float, unit: str, kind: str) -> float:
@@ -195,6 +201,9 @@ def ratio(amount: str, per: str) -> float:
     (top, top_unit), (bottom, bottom_unit) = split(amount), split(per)
     if bottom == 0:
         raise InputError(f"{per!r} is zero; one pass must be greater than zero")
+    for text, number in ((amount, top), (per, bottom)):
+        if number and not SMALLEST <= abs(number) <= GREATEST:
+            raise InputError(f"{text!r} is beyond any duty; check its digits and unit")
     if _word(top_unit) == _word(bottom_unit):
         return top / bottom
     if not (is_unit(top_unit) and is_unit(bottom_unit)):

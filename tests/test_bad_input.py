@@ -5,6 +5,8 @@ Exit 2 for bad input, 3 for a stop that withholds the judgement; never a traceba
 
 from __future__ import annotations
 
+import json
+import os
 from pathlib import Path
 
 import pytest
@@ -78,6 +80,18 @@ BAD_CASES: dict[str, tuple[str, str, list[str]]] = {
     "column number past the end": ('channel = "travel"', "channel = 9", ["work.csv", "9", "2"]),
     "time column missing": ('time = "t"', 'time = "clock"', ["work.csv", "'clock'"]),
     "unit of another kind": ('unit = "mm"', 'unit = "N"', ["'N'", "length"]),
+    "a path with a NUL": ('"work.csv"', '"work\\u0000.csv"', ["duty.event[1].record", "U+0000"]),
+    "a length beyond any spring": ('"60 mm"', '"1e300 mm"', ["spring.free_length", "beyond any length"]),
+    "a target beyond any duty": ('"100 h"', '"1e300 h"', ["duty", "beyond any duty"]),
+    "a scale beyond any sensor": ('unit = "mm"', 'unit = "mm"\nscale = 1e-300', ["duty.event[1]", "scale is 1e-300"]),
+    "a fraction past all floats": ('"60 mm"', '"60/1' + "0" * 400 + ' mm"', ["spring.free_length", "not finite"]),
+    "nested past reading": ("format = 1", "format = " + "[" * 5000 + "]" * 5000, ["case.toml", "nested too deeply"]),
+    "a whole number of thousands of digits": ("format = 1", "format = " + "1" * 6000, ["case.toml", "digits"]),
+    "a grid of a million": (
+        "[judge]", '[[option]]\nname = "g"\nspring.total_coils = ' + str(list(range(1, 1001)))
+        + "\nspring.free_length = " + str([f"{n} mm" for n in range(50, 1050)]).replace("'", '"') + "\n[judge]",
+        ["option 'g'", "1000000 springs", "5000"],
+    ),
     "unit missing": ('unit = "mm"\n', "", ["work.csv", "travel", "unit"]),
 }  # fmt: skip
 
@@ -140,6 +154,20 @@ def test_case_missing_or_a_directory(tmp_path: Path, capsys: pytest.CaptureFixtu
     assert code == 2 and "none.toml" in text and "no such file" in text
     code, text = run(tmp_path, capsys)
     assert code == 2 and "is a directory" in text
+
+
+def test_a_pipe_is_no_record_and_no_case(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    os.mkfifo(tmp_path / "pipe")
+    code, text = run(tmp_path / "pipe", capsys)
+    assert code == 2 and "no regular file" in text
+    code, text = run(write_case(tmp_path, CASE.replace("work.csv", "pipe")), capsys)
+    assert code == 2 and "no regular file" in text
+
+
+def test_infinite_results_are_null_in_json(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    case = CASE.replace("total_coils = 12", 'total_coils = 12\ntensile_strength = "500 MPa"')
+    main(["assess", str(write_case(tmp_path, case)), "--json"])
+    json.loads(capsys.readouterr().out, parse_constant=lambda word: pytest.fail(f"{word} in JSON"))
 
 
 def test_case_that_is_not_text(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:

@@ -24,6 +24,8 @@ def files_of(path: Path) -> tuple[Path, ...]:
     FileError
         When nothing is there, or nothing matches.
     """
+    if path.is_fifo() or path.is_char_device():
+        raise FileError(f"{path}: is no regular file; save the record to one")
     if path.is_dir():
         found = [part for part in path.iterdir() if part.is_file() and not part.name.startswith((".", "~"))]
         if not found:

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import difflib
 import hashlib
-import tomllib
+import math
 from collections.abc import Iterator
 from dataclasses import dataclass
 from itertools import product
@@ -28,10 +28,12 @@ from springlife.life.case_input import (
     OptionInput,
     SpringInput,
 )
+from springlife.tables import parse_toml
 
 if TYPE_CHECKING:
     from springlife.spring.helical import HelicalSpring
 
+MOST_NODES = 5000  # of one option's grid
 LARGEST_CASE = 4_000_000  # bytes; a case file is written by hand
 
 
@@ -119,6 +121,11 @@ def _grid(option: OptionInput) -> Iterator[tuple[str, dict[str, Any]]]:
     if not lists:
         yield option.name, option.spring
         return
+    nodes = math.prod(len(values) for values in lists.values())
+    if nodes > MOST_NODES:
+        raise InputError(
+            f"option {option.name!r}: a grid of {nodes} springs; at most {MOST_NODES} are judged at a time"
+        )
     for values in product(*lists.values()):
         chosen = dict(zip(lists, values, strict=True))
         yield f"{option.name}: {', '.join(str(value) for value in values)}", option.spring | chosen
@@ -137,11 +144,10 @@ def load_case(path: str | Path) -> Case:
     path = Path(path)
     data = read_bytes(path)
     try:
-        raw = tomllib.loads(data.decode("utf-8-sig"))
+        text = data.decode("utf-8-sig")
     except UnicodeDecodeError as error:
         raise InputError(f"{path}: byte {error.start} is not UTF-8 text; save the case file as UTF-8") from error
-    except tomllib.TOMLDecodeError as error:
-        raise InputError(f"{path}: not valid TOML: {error}; see the case file's description in the README") from error
+    raw = parse_toml(text, str(path))
     case = Case(path, hashlib.sha256(data).hexdigest(), raw, _checked(raw, path))
     case.options()
     return case
@@ -152,6 +158,8 @@ def read_bytes(path: Path) -> bytes:
     try:
         if path.is_dir():
             raise FileError(f"{path}: is a directory; name the case file in it")
+        if path.exists() and not path.is_file():
+            raise FileError(f"{path}: is no regular file; name a case file")
         if path.stat().st_size > LARGEST_CASE:
             raise InputError(f"{path}: is {path.stat().st_size} bytes; a case file has at most {LARGEST_CASE}")
         return path.read_bytes()

@@ -22,7 +22,7 @@ class SpringInput(Table):
     """The [spring] table, in SI."""
 
     grade: str
-    grade_file: str | None = None
+    grade_file: Text | None = None
     wire_diameter: Annotated[Length, Field(gt=0)]
     mean_diameter: Length | None = None
     outer_diameter: Length | None = None
@@ -77,7 +77,7 @@ class EventInput(Table):
     name: Name
     repeats: Annotated[int, Field(ge=1)] = 1
     blocks: Annotated[list[BlockInput], Field(min_length=1)] | None = None
-    record: str | None = None
+    record: Text | None = None
     channel: str | int | None = None
     time: str | int | None = None
     time_unit: str | None = None
@@ -105,8 +105,8 @@ class EventInput(Table):
             raise ValueError(f'installed_deflection is used with measures = "travel", not {self.measures!r}')
         if self.time is not None and self.sample_rate is not None:
             raise ValueError("give either time or sample_rate, not both")
-        if self.scale == 0:
-            raise ValueError("scale is 0; every sample would be equal")
+        if not 1e-12 <= abs(self.scale) <= 1e12:
+            raise ValueError(f"scale is {self.scale:g}; its size must be from 1e-12 to 1e12")
         return self
 
 
@@ -137,7 +137,7 @@ class JudgeInput(Table):
     """The [judge] table: the methods chosen."""
 
     criterion: Literal["goodman", "gerber", "asme-elliptic", "sines"] = "gerber"
-    endurance: str = "zimmerli"
+    endurance: Text = "zimmerli"
     miner: Literal["original", "elementary", "haibach"] = "haibach"
     stress_factor: Literal["bergstraesser", "wahl"] = "bergstraesser"
     curvature_on: Literal["both", "alternating"] = "both"

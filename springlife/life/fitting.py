@@ -96,6 +96,8 @@ def fit_own_tests(
     for name, share in (("reliability", reliability), ("confidence", confidence)):
         if not 0 < share < 1:
             raise InputError(f"{name} is {share:g}; give a share between 0 and 1, such as 0.9")
+    if tensile_strength is not None and not tensile_strength > 0:
+        raise InputError(f"tensile strength is {tensile_strength:g} Pa; it must be above zero")
     own = grade(wire, grade_file)
     Sut = own.tensile_strength(wire_diameter) if tensile_strength is None else tensile_strength
     Ssu, Ssy = SSU_OVER_SUT * Sut, own.static_before * Sut

@@ -133,7 +133,7 @@ def _speed(
     event: EventReading, signal: SignalFacts, spring: HelicalSpring, stress: StressMap, limits: Limits, say: UnitSystem
 ) -> Iterator[Finding]:
     """Content at the spring's own frequencies, and steps faster than its wave."""
-    if signal.sample_rate is None:
+    if not signal.sample_rate:
         return
     first = spring.surge_frequency
     if signal.spectrum is not None:

@@ -2,13 +2,12 @@
 
 from __future__ import annotations
 
-import tomllib
 from collections.abc import Iterator
 from math import inf
 
 from springlife.errors import InputError, nearest
 from springlife.spring.grade import Grade, Moduli, Tensile
-from springlife.tables import Table, number
+from springlife.tables import Table, number, parse_toml
 
 # Groups of numbers, each with a source, and the keys inside.
 _GROUPS = {
@@ -32,10 +31,7 @@ def read_grades(text: str, where: str) -> dict[str, Grade]:
     InputError
         Not TOML, an unknown or missing key, or a value that cannot be used.
     """
-    try:
-        raw = tomllib.loads(text)
-    except tomllib.TOMLDecodeError as error:
-        raise InputError(f"{where}: not valid TOML: {error}") from error
+    raw = parse_toml(text, where)
     whole = Table(raw, f"{where}: ")
     return {name: _grade(name, whole.table(name)) for name in raw}
 

@@ -7,7 +7,6 @@ fractions (:func:`handbook_curve`) or from a curve file of own tests (:func:`rea
 
 from __future__ import annotations
 
-import tomllib
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from itertools import pairwise
@@ -19,7 +18,7 @@ from numpy.typing import ArrayLike
 from springlife.errors import CriterionError, FileError, InputError, nearest
 from springlife.strength.criteria import CRITERIA, Criterion, Floats
 from springlife.strength.endurance import BASES, Fractions, data, handbook, zimmerli
-from springlife.tables import Table
+from springlife.tables import Table, parse_toml
 from springlife.units import METRIC
 
 Miner = str  # a key of MINERS
@@ -321,13 +320,14 @@ def read_curve(path: str | Path) -> CurveFile:
     """
     path = Path(path)
     try:
-        raw = tomllib.loads(path.read_text(encoding="utf-8-sig"))
+        text = path.read_text(encoding="utf-8-sig")
     except FileNotFoundError as error:
         raise FileError(f"{path}: there is no such curve file; check the path") from error
     except OSError as error:
         raise FileError(f"{path}: cannot be read ({error.strerror}); name a curve file") from error
-    except (UnicodeDecodeError, tomllib.TOMLDecodeError) as error:
+    except UnicodeDecodeError as error:
         raise InputError(f"{path}: not valid TOML: {error}") from error
+    raw = parse_toml(text, str(path))
     top = Table(raw, f"{path}: ")
     top.only("format", "title", "source", "criterion", "reliability", "confidence", "group")
     if top.whole("format") != FORMAT:
