@@ -30,7 +30,7 @@ Gaps = Literal["error", "split"]
 Piece = tuple[Floats, Floats, Floats]
 
 EXACT = 2**53  # whole numbers up to here are floats
-SEGMENT = 2**18  # samples that are counted apart: 2 MB, and enough that what is done once a segment does not show
+SEGMENT = 2**20  # samples that are counted apart: 8 MB, so that handing them to a worker does not show
 MOST_PAIRS = 250_000  # 6 MB, and 700,000 samples of noise; see the manual
 
 
@@ -121,7 +121,7 @@ class Tally:
         self._stack, self._top = np.empty(64), 0
         self._minimum, self._maximum = math.inf, -math.inf
         self._fed = self._samples = 0
-        self._scratch = [Scratch() for _ in range(workers + 1 if workers > 1 else 1)]
+        self._scratch = [Scratch() for _ in range(workers + 2)]  # for each worker, what is taken in, and pieces
         self._places = np.empty(0, dtype=np.int64) if where else None
         self.largest: Located | None = None
 
@@ -164,11 +164,11 @@ class Tally:
         ahead: deque[tuple[Floats, Future[Piece | None]]] = deque()
         with ThreadPoolExecutor(self._workers) as pool:
             for number, segment in enumerate(segments):
-                if len(ahead) == self._workers:  # the scratch of the oldest is in use until it has been taken in
+                scratch = self._scratch[number % (self._workers + 1)]
+                ahead.append((segment, pool.submit(run.reduce, segment, scratch)))
+                if len(ahead) > self._workers:  # one is taken in while as many as there are workers are counted
                     oldest, piece = ahead.popleft()
                     yield oldest, piece.result()
-                scratch = self._scratch[number % len(self._scratch)]
-                ahead.append((segment, pool.submit(run.reduce, segment, scratch)))
             for oldest, piece in ahead:
                 yield oldest, piece.result()
 
