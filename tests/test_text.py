@@ -142,7 +142,7 @@ def test_arrow_alone_takes_what_loggers_write() -> None:
 
 @pytest.mark.parametrize(
     "row", [b"1,2,3\n", b"1\n", b"1,\n2\n", b"1,1_0\n", b"1,0x1\n", b"1,--2\n", b"1,.\n", b"1,1e\n", b"1,'2'\n", b"1,2\r3\n",
-            b'1,2"\n', b'1,"2\n', b"1,1 2\n", b"1,na\n"],
+            b'1,2"\n', b'1,"2\n', b'1,"0"1\n', b'"0"1,2\n', b"1,1 2\n", b"1,na\n"],
 )  # fmt: skip
 def test_arrow_refuses_what_needs_care(row: bytes) -> None:
     assert parse(b"0,1\n" + row, Columns(",", ".", 2, 1, None)) is None
