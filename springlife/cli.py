@@ -7,6 +7,7 @@ Results go to stdout, progress and warnings to stderr. Exit codes: 0 meets the t
 from __future__ import annotations
 
 import argparse
+import os
 import sys
 
 from springlife import __version__
@@ -46,14 +47,21 @@ def main(argv: Sequence[str] | None = None) -> int:
         print("springlife: stopped; nothing was written", file=sys.stderr)
         return 130
     except BrokenPipeError:
-        # The reader of a pipe went away: nobody is left to tell.
-        sys.stderr.close()
-        return 0
+        # The reader of a pipe went away: nobody is left to tell. What stands in the buffer goes nowhere.
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return 141
 
 
 def run() -> NoReturn:
-    """Entry point of the console script."""
-    sys.exit(main())
+    """Entry point of the console script; a fault of our own ends apart from every verdict."""
+    try:
+        sys.exit(main())
+    except Exception as error:
+        if "SPRINGLIFE_TRACEBACK" in os.environ:
+            raise
+        name = type(error).__name__
+        print(f"springlife: a fault of the program ({name}: {error}); please report it", file=sys.stderr)
+        sys.exit(70)
 
 
 def _parser() -> argparse.ArgumentParser:
@@ -204,6 +212,8 @@ def _fit(arguments: argparse.Namespace) -> int:
 
         _save(own_tests(result), arguments)
     if arguments.output:
+        if os.path.realpath(arguments.output) == os.path.realpath(arguments.tests):
+            raise InputError(f"{arguments.output}: is the table of tests; name another file for the curve")
         result.write(arguments.output, title=arguments.title, force=arguments.force)
     if arguments.json:
         _print_json(result.to_dict())
@@ -290,9 +300,10 @@ def _surge(arguments: argparse.Namespace) -> int:
 
     result = surge(arguments.case)
     if arguments.figure:
-        from springlife.report.figures_surge import cam_speeds, coil_stress
+        from springlife.report.figures_speed import cam_speeds
+        from springlife.report.figures_surge import along_the_wire
 
-        _save(cam_speeds(result) if result.cams else coil_stress(result), arguments)
+        _save(cam_speeds(result) if result.cams else along_the_wire(result), arguments)
     if arguments.json:
         _print_json(result.to_dict())
     else:
@@ -364,7 +375,7 @@ def _scatter(arguments: argparse.Namespace) -> int:
 
 
 def _number_or_name(text: str | None) -> str | int | None:
-    return int(text) if text is not None and text.isdigit() else text
+    return int(text) if text is not None and text.isascii() and text.isdigit() and len(text) < 10 else text
 
 
 def _count(arguments: argparse.Namespace) -> int:

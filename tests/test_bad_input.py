@@ -92,6 +92,25 @@ BAD_CASES: dict[str, tuple[str, str, list[str]]] = {
         + "\nspring.free_length = " + str([f"{n} mm" for n in range(50, 1050)]).replace("'", '"') + "\n[judge]",
         ["option 'g'", "1000000 springs", "5000"],
     ),
+    "a limit below zero": ("[judge]", "[limits]\nyield_factor = -5.0\n[judge]", ["limits.yield_factor is -5", "above zero"]),
+    "a yield factor under one": ("[judge]", "[limits]\nyield_factor = 0.5\n[judge]", ["limits.yield_factor", "at least 1"]),
+    "a share of more than all": ("[judge]", "[limits]\nlift_off_fraction = 9.0\n[judge]", ["lift_off_fraction is 9", "share"]),
+    "limits that cross": ("[judge]", "[limits]\nindex_low = 100.0\n[judge]", ["index_low is 100", "below index_high"]),
+    "a waiver by nobody": (
+        "[judge]", '[[waive]]\nfinding = "past-solid"\nby = " "\nreason = "r"\n[judge]', ["waive[1].by", "write a name"],
+    ),
+    "a waiver twice": (
+        "[judge]", '[[waive]]\nfinding = "yields"\nby = "a"\nreason = "r"\n' * 2 + "[judge]", ["two waivers are for 'yields'"],
+    ),
+    "an empty list in a grid": (
+        "[judge]", '[[option]]\nname = "g"\nspring.wire_diameter = []\n[judge]', ["option 'g'", "spring.wire_diameter is empty"],
+    ),
+    "names that clash after expansion": (
+        "[judge]", '[[option]]\nname = "g"\nspring.wire_diameter = ["2 mm", "2 mm"]\n[judge]', ["two options come out as 'g: 2 mm'"],
+    ),
+    "a knee past all tests": ("[judge]", "[judge]\nknee = 1e300", ["judge.knee", "less than or equal"]),
+    "an allowed sum past all sense": ("[judge]", "[judge]\nallowed_damage = 1e6", ["judge.allowed_damage", "less than or equal"]),
+    "a record without a name": ('"work.csv"', '""', ["duty.event[1].record", "at least 1 character"]),
     "unit missing": ('unit = "mm"\n', "", ["work.csv", "travel", "unit"]),
 }  # fmt: skip
 

@@ -11,6 +11,7 @@ import pytest
 from casefile import write_case
 from test_findings import QUIET
 
+from springlife import cli
 from springlife.cli import main
 
 ROOT = Path(__file__).parent.parent
@@ -124,7 +125,25 @@ def test_no_command_prints_help_and_is_bad_usage(capsys: pytest.CaptureFixture[s
     assert "assess" in capsys.readouterr().out
 
 
-def test_a_reader_that_goes_away_is_no_traceback() -> None:
-    command = f"{sys.executable} -m springlife.cli grades | head -1; exit ${{PIPESTATUS[0]}}"
+def test_a_reader_that_goes_away_is_no_traceback_and_no_verdict() -> None:
+    command = f"{sys.executable} -m springlife.cli grades | true; exit ${{PIPESTATUS[0]}}"
     run = subprocess.run(["bash", "-c", command], capture_output=True, text=True, check=False, cwd=ROOT)
-    assert "Traceback" not in run.stderr
+    assert "Traceback" not in run.stderr and run.returncode == 141
+
+
+def test_a_fault_of_the_program_is_no_verdict(
+    monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    def fail(argv: object = None) -> int:
+        raise RuntimeError("made to fail")
+
+    monkeypatch.setattr(cli, "main", fail)
+    with pytest.raises(SystemExit) as stop:
+        cli.run()
+    assert stop.value.code == 70 and "RuntimeError: made to fail" in capsys.readouterr().err
+
+
+def test_limits_of_the_case_are_told(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    case = QUIET.replace("[judge]", "[limits]\nclash_allowance = 0.1\n[judge]")
+    main(["assess", str(write_case(tmp_path, case, None))])
+    assert "clash_allowance 0.1 for 0.15" in capsys.readouterr().out

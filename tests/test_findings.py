@@ -11,6 +11,7 @@ import numpy as np
 import pytest
 from casefile import write_case
 
+from springlife.errors import InputError
 from springlife.life.assess import Assessment, assess
 from springlife.life.findings import CATALOGUE
 
@@ -174,6 +175,23 @@ def test_waiver_lifts_a_stop_by_name_and_reason(tmp_path: Path) -> None:
 def test_waiver_does_not_lift_what_leaves_nothing_to_judge(tmp_path: Path) -> None:
     waiver = '[[waive]]\nfinding = "impossible-geometry"\nby = "R. Viewer"\nreason = "none"\n[judge]'
     assert judged(tmp_path, [('"16 mm"', '"1.5 mm"'), ("[judge]", waiver)]).verdict == "withheld"
+
+
+def test_a_deflection_longer_than_the_spring_cannot_be_waived(tmp_path: Path) -> None:
+    waiver = '[[waive]]\nfinding = "past-solid"\nby = "R. Viewer"\nreason = "bump stop"\n[judge]'
+    result = judged(tmp_path, [('"20 mm"', '"56 mm"'), ("[judge]", waiver)])
+    assert result.verdict == "withheld"
+    assert "impossible-geometry" in {finding.code for finding in result.findings}
+
+
+@pytest.mark.parametrize(("modulus", "found"), [("80 GPa", False), ("8 GPa", True), ("800 GPa", False)])
+def test_a_shear_modulus_of_another_unit(modulus: str, found: bool, tmp_path: Path) -> None:
+    if modulus == "800 GPa":  # past Young's modulus: no spring at all
+        with pytest.raises(InputError, match="shear_modulus"):
+            judged(tmp_path, [("total_coils", f'shear_modulus = "{modulus}"\ntotal_coils')])
+        return
+    result = judged(tmp_path, [("total_coils", f'shear_modulus = "{modulus}"\ntotal_coils')])
+    assert ("unit-mismatch" in {finding.code for finding in result.findings}) == found
 
 
 def test_a_limit_set_in_the_case_is_used(tmp_path: Path) -> None:

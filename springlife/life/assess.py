@@ -32,6 +32,8 @@ from springlife.strength.curve import MINERS, endurance_curve
 from springlife.strength.endurance import BASES
 from springlife.units import UnitSystem, split, system_of
 
+HUGE = 1e9  # a margin beyond is that of a spring without stress
+
 
 @dataclass(frozen=True)
 class EventResult:
@@ -320,9 +322,9 @@ def _margin(
 ) -> tuple[float | None, str]:
     """Return the factor on every stress at which the target is just met, and what governs it."""
     peak = float(model.stress.static(np.asarray(high)))
-    if peak <= 0:
+    ceiling = spring.static_limit / peak if peak > 0 else np.inf
+    if not ceiling < HUGE:
         return None, "no stress"
-    ceiling = spring.static_limit / peak
     factor = greatest_factor(lambda x: life.damage(model, x), case.judge.allowed_damage, ceiling)
     return factor, "yield" if factor == ceiling else "fatigue"
 

@@ -108,16 +108,24 @@ class Case:
 
     def options(self) -> tuple[Case, ...]:
         """Return each [[option]] merged into the case, in the order of the file; a grid gives one case a node."""
-        return tuple(
+        options = tuple(
             self.varied(name, spring, option.judge, f"option[{number}].")
             for number, option in enumerate(self.input.option, start=1)
             for name, spring in _grid(option)
         )
+        names = [self.name, *(option.name for option in options)]
+        twice = next((name for number, name in enumerate(names) if name in names[:number]), None)
+        if twice is not None:
+            raise InputError(f"{self.path}: two options come out as {twice!r}; name each differently")
+        return options
 
 
 def _grid(option: OptionInput) -> Iterator[tuple[str, dict[str, Any]]]:
     """Yield every combination of the lists in an option's [spring] overrides, named by what varies."""
     lists = {key: value for key, value in option.spring.items() if isinstance(value, list)}
+    for key, given in lists.items():
+        if not given:
+            raise InputError(f"option {option.name!r}: the list of spring.{key} is empty; give its values")
     if not lists:
         yield option.name, option.spring
         return

@@ -8,8 +8,8 @@ from pydantic import Field, field_validator, model_validator
 
 from springlife import units
 from springlife.errors import nearest
-from springlife.life.fields import Length, Name, Positive, Share, Table, Text, quantity
-from springlife.life.limits import LIMITS
+from springlife.life.fields import Length, Name, Share, Table, Text, quantity
+from springlife.life.limits import check_limits
 from springlife.life.scatter_input import ScatterInput
 from springlife.life.size_input import SizeInput
 from springlife.life.surge_input import SurgeInput
@@ -77,7 +77,7 @@ class EventInput(Table):
     name: Name
     repeats: Annotated[int, Field(ge=1)] = 1
     blocks: Annotated[list[BlockInput], Field(min_length=1)] | None = None
-    record: Text | None = None
+    record: Name | None = None
     channel: str | int | None = None
     time: str | int | None = None
     time_unit: str | None = None
@@ -141,11 +141,11 @@ class JudgeInput(Table):
     miner: Literal["original", "elementary", "haibach"] = "haibach"
     stress_factor: Literal["bergstraesser", "wahl"] = "bergstraesser"
     curvature_on: Literal["both", "alternating"] = "both"
-    allowed_damage: Positive = 1.0
+    allowed_damage: Annotated[float, Field(gt=0, le=10)] = 1.0
     residue: Literal["repeat", "half", "drop"] = "repeat"
     peaks_between_samples: bool = False  # estimate what the sampling rate cut off, beside the plain count
     strength_fraction: Share | None = None  # f of the two-point curve; None takes the data file's value
-    knee: Annotated[float, Field(gt=1e4)] | None = None
+    knee: Annotated[float, Field(gt=1e4, le=1e9)] | None = None
 
     @field_validator("endurance")
     @classmethod
@@ -202,10 +202,12 @@ class CaseInput(Table):
     def _known(self) -> CaseInput:
         if self.format != FORMAT:
             raise ValueError(f"format is {self.format}; this version reads format = {FORMAT}")
-        for key in self.limits:
-            if key not in LIMITS:
-                raise ValueError(f"limits.{key} is not known; {nearest(key, LIMITS)}")
-        names = [option.name for option in self.option]
-        if len(set(names)) != len(names):
-            raise ValueError("two options have the same name")
+        check_limits(self.limits)
+        for what, names in (
+            ("options have the name", [option.name for option in self.option]),
+            ("waivers are for", [waiver.finding for waiver in self.waive]),
+        ):
+            twice = sorted({name for name in names if names.count(name) > 1})
+            if twice:
+                raise ValueError(f"two {what} {twice[0]!r}; keep one")
         return self

@@ -29,8 +29,15 @@ def _printable(text: str) -> str:
     return text
 
 
+def _not_blank(text: str) -> str:
+    """Refuse a name of nothing but spaces."""
+    if not text.strip():
+        raise ValueError(f"is {text!r}; write a name")
+    return text
+
+
 Text = Annotated[str, AfterValidator(_printable)]
-Name = Annotated[str, Field(min_length=1), AfterValidator(_printable)]
+Name = Annotated[str, Field(min_length=1), AfterValidator(_printable), AfterValidator(_not_blank)]
 Length = Annotated[float, quantity("length")]
 Positive = Annotated[float, Field(gt=0)]
 Share = Annotated[float, Field(gt=0, lt=1)]

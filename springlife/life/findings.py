@@ -28,6 +28,7 @@ if TYPE_CHECKING:
     from springlife.spring.stress import StressMap
 
 Level = Literal["stop", "warn", "note"]
+FAR = 1.5  # a given shear modulus off the grade's by more is a slip of the unit
 LEVELS: tuple[Level, ...] = ("stop", "warn", "note")
 
 
@@ -115,6 +116,11 @@ def of_part(
     if spring.active_coils < limits["active_coils_low"]:
         message = f"{significant(spring.active_coils, 3)} active coils are fewer than {limits['active_coils_low']:g}"
         yield found("coils-too-few", message)
+    if given.shear_modulus is not None:
+        usual = spring.grade.moduli(spring.wire_diameter)[1]
+        if not 1 / FAR < spring.G / usual < FAR:
+            message = f"shear modulus {say(spring.G, 'stress')} is far from the {say(usual, 'stress')} of "
+            yield found("unit-mismatch", f"{message}{spring.grade.name}")
     Sut = spring.Sut
     if not limits["tensile_low_MPa"] * 1e6 <= Sut <= limits["tensile_high_MPa"] * 1e6:
         allowed = f"{limits['tensile_low_MPa']:g} to {limits['tensile_high_MPa']:g} MPa"
@@ -142,8 +148,7 @@ def of_motion(
 ) -> Iterator[Finding]:
     """Yield what the greatest and least deflection show: solid, clash, lift-off, yield, buckling."""
     low, high = duty.extremes(spring)
-    solid = spring.solid_deflection
-    yield from _solid(duty, high, solid, limits, say)
+    yield from _solid(duty, high, spring, limits, say)
     yield from _lift_off(duty, low, limits, say)
     yield from _yields(spring, stress, high, limits, say)
     critical = spring.buckling_deflection
@@ -152,7 +157,14 @@ def of_motion(
         yield found("buckles", message, "note" if spring.guided else "stop")
 
 
-def _solid(duty: Duty, high: float, solid: float, limits: Mapping[str, float], say: UnitSystem) -> Iterator[Finding]:
+def _solid(
+    duty: Duty, high: float, spring: HelicalSpring, limits: Mapping[str, float], say: UnitSystem
+) -> Iterator[Finding]:
+    solid = spring.solid_deflection
+    free = spring.free_length
+    if high >= free:
+        message = f"greatest deflection {say(high, 'length')} is not less than the free length {say(free, 'length')}"
+        yield found("impossible-geometry", message)
     if high > solid + ROUNDING:
         past = [
             f"{event.name!r} {event.past_solid.describe()}"

@@ -10,6 +10,7 @@ import sys
 from collections.abc import Iterable, Sequence
 from typing import TYPE_CHECKING, Any
 
+from springlife.life.limits import LIMITS
 from springlife.units import METRIC, significant
 
 if TYPE_CHECKING:
@@ -39,7 +40,14 @@ def console_for_output() -> Console:
     from rich.console import Console
 
     piped = not sys.stdout.isatty() and "COLUMNS" not in os.environ
-    return Console(highlight=False, markup=False, emoji=False, width=PIPED_WIDTH if piped else None)
+
+    class Plain(Console):
+        """A console that leaves a reader gone away to the caller."""
+
+        def on_broken_pipe(self) -> None:
+            raise BrokenPipeError
+
+    return Plain(highlight=False, markup=False, emoji=False, width=PIPED_WIDTH if piped else None)
 
 
 def print_rows(console: Console, rows: Iterable[tuple[str, str]], style: str = "bold") -> None:
@@ -134,8 +142,15 @@ def _summary(result: Assessment, j: Judgement) -> list[tuple[str, str]]:
                    f"{'mean and amplitude' if case.judge.curvature_on == 'both' else 'the amplitude'}; "
                    f"residue: {case.judge.residue}"),
         ("counted", _how_counted(result)),
+        *([("limits", _changed_limits(result))] if case.input.limits else []),
         ("reliability", result.reliability),
     ]  # fmt: skip
+
+
+def _changed_limits(result: Assessment) -> str:
+    """Name the thresholds that the case set itself."""
+    changed = (f"{key} {value:g} for {LIMITS[key].value:g}" for key, value in result.case.input.limits.items())
+    return f"set by the case: {', '.join(changed)}"
 
 
 def _how_counted(result: Assessment) -> str:

@@ -29,6 +29,7 @@ MINERS: dict[str, Callable[[Floats], Floats]] = {
     "haibach": lambda k: 2 * k - 1,
 }
 FORMAT = 1
+MOST_POINTS = 500
 
 
 def cycles_to_failure(
@@ -350,6 +351,8 @@ def _group(table: Table, path: Path, top: Table) -> CurveGroup:
         raise InputError(f"{table.where}give exactly one of points and line")
     if "points" in table.raw:
         given = table.tables("points")
+        if len(given) > MOST_POINTS:
+            raise InputError(f"{table.where}points has {len(given)} points; at most {MOST_POINTS} make a curve")
         for point in given:
             point.only("cycles", "amplitude")
         points = tuple((point.positive("cycles"), point.quantity("amplitude", "stress")) for point in given)
