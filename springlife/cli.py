@@ -75,6 +75,7 @@ def _parser() -> argparse.ArgumentParser:
     assess = _case_command(commands, "assess", _assess, "judge a case: life, damage, margin, findings")
     assess.add_argument("--surge", action="store_true", help="also with the wave in the coils; its verdict counts")
     _case_command(commands, "check", _check, "read everything a case names, judge nothing")
+    _report_command(commands)
     _compare_command(commands)
     _count_command(commands)
     _scatter_command(commands)
@@ -114,6 +115,40 @@ def _compare_command(commands: Any) -> None:
         help="what stays as of the drawn spring (default: stroke)",
     )
     _figure_options(parser, "all options in one Haigh diagram")
+
+
+def _report_command(commands: Any) -> None:
+    parser = _case_command(commands, "report", _report, "write the report of a case into a folder: PDF, page, data")
+    parser.add_argument("-o", "--output", metavar="DIR", help="the folder (default: reports/NAME, after the case)")
+    parser.add_argument("--paper", choices=("a4", "letter"), default="a4", help="default: a4")
+    parser.add_argument("--date", metavar="YYYY-MM-DD", help="date of the report (default: the case's own)")
+    for study in ("scatter", "rig", "surge"):
+        parser.add_argument(f"--{study}", action="store_true", help=f"with the {study} study")
+    parser.add_argument("--force", action="store_true", help="write over a report that is already there")
+
+
+def _report(arguments: argparse.Namespace) -> int:
+    from springlife.report.bundle import STUDIES, default_folder, write_report
+    from springlife.report.progress import Progress
+
+    progress = Progress()
+    try:
+        written = write_report(
+            arguments.case,
+            arguments.output or default_folder(arguments.case),
+            paper=arguments.paper,
+            date=arguments.date,
+            ask=tuple(study for study in STUDIES if getattr(arguments, study)),
+            force=arguments.force,
+            watch=progress.doing,
+        )
+    finally:
+        progress.close()
+    if arguments.json:
+        _print_json(written.to_dict())
+    else:
+        print(f"{written.verdict.upper()}: {written.folder}")
+    return EXIT[written.verdict]
 
 
 def _size(arguments: argparse.Namespace) -> int:
@@ -301,9 +336,9 @@ def _surge(arguments: argparse.Namespace) -> int:
     result = surge(arguments.case)
     if arguments.figure:
         from springlife.report.figures_speed import cam_speeds
-        from springlife.report.figures_surge import along_the_wire
+        from springlife.report.figures_surge import coil_stress
 
-        _save(cam_speeds(result) if result.cams else along_the_wire(result), arguments)
+        _save(cam_speeds(result) if result.cams else coil_stress(result), arguments)
     if arguments.json:
         _print_json(result.to_dict())
     else:

@@ -38,13 +38,24 @@ class Rows:
 
 
 @dataclass(frozen=True)
+class Points:
+    """Sentences that stand side by side."""
+
+    caption: str
+    items: tuple[str, ...]
+
+
+@dataclass(frozen=True)
 class Table:
-    """A table; the first ``left`` columns are words, the others numbers. ``empty`` stands there without rows."""
+    """A table; ``align`` has a letter for each column, l for words and r for numbers, the last holding for the rest.
+
+    ``empty`` stands in its place when there are no rows.
+    """
 
     caption: str
     heads: tuple[str, ...]
     rows: tuple[tuple[str, ...], ...]
-    left: int = 1
+    align: str = "lr"
     empty: str = "none"
 
 
@@ -69,7 +80,7 @@ class Worked:
     source: str
 
 
-Block = Text | Rows | Table | Figure | Worked
+Block = Text | Rows | Points | Table | Figure | Worked
 
 
 @dataclass(frozen=True)
@@ -152,13 +163,15 @@ def plain(block: Block) -> dict[str, Any]:
             return {"kind": "text", "text": text}
         case Rows(pairs):
             return {"kind": "rows", "rows": [list(pair) for pair in pairs]}
-        case Table(caption, heads, body, left, empty):
+        case Points(caption, items):
+            return {"kind": "points", "caption": caption, "items": list(items)}
+        case Table(caption, heads, body, align, empty):
             return {
                 "kind": "table",
                 "caption": caption,
                 "heads": list(heads),
                 "rows": [list(row) for row in body],
-                "left": left,
+                "align": list(align.ljust(len(heads), align[-1])),
                 "empty": empty,
             }
         case Figure(name, caption, alt):

@@ -13,7 +13,7 @@ from typing import TYPE_CHECKING, Any
 
 from springlife import __version__
 from springlife.report import contents_life, contents_part, contents_studies
-from springlife.report.blocks import Block, Figure, Rows, Section, Table, Text, plain, rows
+from springlife.report.blocks import Block, Figure, Points, Rows, Section, Table, Text, plain, rows
 from springlife.report.terminal import VERDICTS, quantity_of_life
 from springlife.units import significant
 
@@ -72,7 +72,8 @@ class Report:
     @property
     def figures(self) -> tuple[Figure, ...]:
         """All figures in order."""
-        return tuple(block for section in self.sections for block in section.blocks if isinstance(block, Figure))
+        blocks = [*self.front, *(block for section in self.sections for block in section.blocks)]
+        return tuple(block for block in blocks if isinstance(block, Figure))
 
     def to_dict(self) -> dict[str, Any]:
         """Return what the typesetters need: text, numbers and the names of figures."""
@@ -152,17 +153,19 @@ def _front(result: Assessment, studies: Studies) -> Iterator[Block]:
                 ("without surge", VERDICTS[result.verdict][0].lower() if studies.surge else ""),
             ]
         )
-        yield Table("Margins", ("check", "margin", "what is compared"), tuple(_margins(result, j)), left=1)
+        yield Table("Margins", ("check", "margin", "what is compared"), tuple(_margins(result, j)), align="lrl")
     yield _findings("Open findings", [f for f in result.findings if f.waived_by is None and f.level != "note"])
     waived = [f for f in result.findings if f.waived_by is not None]
     heads = ("finding", "waived by", "reason", "what was seen")
     body = tuple((f.code, f.waived_by or "", f.reason or "", f.message) for f in waived)
-    yield Table("Waivers", heads, body, left=4, empty="no finding is waived")
+    yield Table("Waivers", heads, body, align="l", empty="no finding is waived")
+    if j is not None:
+        yield contents_part.haigh_figure(result, j)
 
 
 def _findings(caption: str, findings: list[Finding]) -> Table:
     body = tuple((f.level, f.code, f.message, f.remedy) for f in findings)
-    return Table(caption, ("level", "finding", "what was seen", "what to do"), body, left=4, empty="none")
+    return Table(caption, ("level", "finding", "what was seen", "what to do"), body, align="l", empty="none")
 
 
 def _governing(result: Assessment, j: Judgement) -> str:
@@ -233,9 +236,9 @@ def _limits_of_it(result: Assessment) -> Section:
     notes = [f for f in result.findings if f.level == "note" and f.waived_by is None]
     changed = result.case.input.limits
     blocks: list[Block] = [
-        Table("Assumptions", ("what is taken for granted",), tuple((text,) for text in ASSUMPTIONS)),
+        Points("Assumptions", ASSUMPTIONS),
         _findings("Notes", notes),
-        Table("Cautions", ("what to bear in mind",), tuple((text,) for text in CAUTIONS)),
+        Points("Cautions", CAUTIONS),
     ]
     if changed:
         body = tuple((key, f"{value:g}") for key, value in changed.items())
@@ -252,19 +255,22 @@ def _sources(result: Assessment, studies: Studies) -> Section:
         "In brackets stands how a number came here: published, read in the source; memory, recalled without the source "
         "open; common practice, without a source."
     )
-    return Section("Sources", (Text(text), Table("Where the numbers come from", ("no.", "source"), body, left=2)))
+    return Section("Sources", (Text(text), Table("Where the numbers come from", ("no.", "source"), body, align="llr")))
 
 
 def _traceability(result: Assessment, studies: Studies, command: str) -> Section:
     case = result.case
-    files = Table("Files read", ("file", "SHA-256"), result.inputs, left=2)
     versions = [("springlife", __version__), ("Python", platform.python_version())]
     versions += [(name, version(name)) for name in LIBRARIES]
     settings = [(key, "-" if value is None else str(value)) for key, value in case.judge.model_dump().items()]
     if studies.scatter:
         settings += [("scatter samples", str(studies.scatter.samples)), ("scatter seed", str(studies.scatter.seed))]
+    files = Table("Files read", ("file", "SHA-256"), result.inputs, align="l")
     return Section(
         "Traceability",
-        (Rows((("command", command),)), files, Table("Settings", ("setting", "value"), tuple(settings), left=2),
-         Table("Versions", ("program", "version"), tuple(versions), left=2)),
-    )  # fmt: skip
+        (
+            Rows((("command", command), ("programs", ", ".join(f"{name} {number}" for name, number in versions)))),
+            files,
+            Table("Settings", ("setting", "value"), tuple(settings), align="l"),
+        ),
+    )

@@ -38,7 +38,7 @@ def counting(result: Assessment, j: Judgement) -> Section:
              significant(damage, 3), f"{100 * damage / total:.1f} %" if 0 < total < np.inf else "-")
             for low, high, count, damage in figures_damage.range_classes(j)
         ),
-        left=0,
+        align="r",
         empty="the duty has no cycle",
     )  # fmt: skip
     text = (
@@ -49,13 +49,13 @@ def counting(result: Assessment, j: Judgement) -> Section:
         "What the reading of the residue does",
         ("residue", "meaning", "damage at the target", "life"),
         tuple(_residue_row(result, name) for name in RESIDUES),
-        left=2,
+        align="llr",
     )
     recount = Table(
         "Recount of one occurrence of each record by the rainflow package",
         ("event", "outcome"),
         tuple(recounted(result)),
-        left=2,
+        align="llr",
         empty="the duty has no record",
     )
     cycles = significant(float(j.cycles.count.sum()))
@@ -131,7 +131,7 @@ def band(result: Assessment, j: Judgement) -> Section:
         "Life under every published choice",
         ("endurance", "Miner", *criteria),
         tuple((*key, *(lives[name] for name in criteria)) for key, lives in cells.items()),
-        left=2,
+        align="llr",
     )
     blocks: list[Block] = [table]
     if result.mover:
@@ -148,7 +148,9 @@ def band(result: Assessment, j: Judgement) -> Section:
 def options(comparison: Comparison) -> Section:
     """The drawn spring and its alternatives."""
     heads = ("option", "verdict", "life", "damage at target", "margin", "B10 life", "mass", "findings")
-    table = Table(f"Options; held: {comparison.hold}", heads, tuple(_option(one) for one in comparison.options), left=2)
+    table = Table(
+        f"Options; held: {comparison.hold}", heads, tuple(_option(one) for one in comparison.options), align="llrrrrrl"
+    )
     blocks: list[Block] = [Text(f"Held: {comparison.held}."), table]
     blocks += [Text(f"{finding.message}; {finding.remedy}.") for finding in comparison.findings]
     if any(one.assessment.judgement for one in comparison.options):

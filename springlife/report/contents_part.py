@@ -5,8 +5,6 @@ from __future__ import annotations
 from collections.abc import Iterator
 from typing import TYPE_CHECKING
 
-import numpy as np
-
 from springlife.report import worked_numbers
 from springlife.report.blocks import Block, Figure, Rows, Section, Table, Text, rows
 from springlife.report.drawing import spring_drawing, states
@@ -77,7 +75,7 @@ def duty(result: Assessment, j: Judgement) -> Section:
              significant(one.damage, 3), f"{100 * one.share:.1f} %")
             for reading, one in zip(events, j.events, strict=True)
         ),
-        left=2,
+        align="llr",
     )  # fmt: skip
     blocks: list[Block] = [
         Text(
@@ -174,15 +172,19 @@ def strength(result: Assessment, j: Judgement) -> Section:
         "Points of the life curve",
         ("cycles", f"fully reversed amplitude, {result.say.units['stress']}"),
         tuple((significant(N), result.say.number(S, "stress")) for N, S in curve.points),
-        left=0,
+        align="r",
     )
-    figure = Figure(
+    return Section("Strength", (rows(lines), *worked_numbers.of_strength(result, j), points))
+
+
+def haigh_figure(result: Assessment, j: Judgement) -> Figure:
+    """Return the Haigh diagram, which stands on page one."""
+    return Figure(
         "haigh",
         "Cycles among the criteria (Haigh diagram): dots by damage, each criterion at the knee, dashed: yield.",
         f"Alternating over mean shear stress; worst cycle {_worst(result, j)}.",
         lambda: haigh(result),
     )
-    return Section("Strength", (rows(lines), *worked_numbers.of_strength(result, j), points, figure))
 
 
 def _worst(result: Assessment, j: Judgement) -> str:
@@ -195,9 +197,3 @@ def as_given(result: Assessment) -> Section:
     """Return the [spring] table as written: all there is when nothing could be judged."""
     raw = result.case.raw["spring"]
     return Section("The part as given", (Rows(tuple((str(key), str(value)) for key, value in raw.items())),))
-
-
-def static_peak(result: Assessment, j: Judgement) -> float:
-    """Return the greatest stress of the duty held against the static limit, Pa."""
-    assert result.duty is not None
-    return float(j.model.stress.static(np.asarray(result.duty.extremes(j.spring)[1])))

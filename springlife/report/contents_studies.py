@@ -3,13 +3,15 @@
 from __future__ import annotations
 
 import math
+from functools import partial
 from typing import TYPE_CHECKING
 
 from springlife.life.scatter import CONFIDENCE
 from springlife.report.blocks import Block, Figure, Section, Table, Text, rows
 from springlife.report.figures_rig import rig_cycles
 from springlife.report.figures_scatter import tornado
-from springlife.report.figures_surge import along_the_wire
+from springlife.report.figures_speed import cam_speeds
+from springlife.report.figures_surge import along_the_wire, coil_stress
 from springlife.report.scatter_text import describe
 from springlife.report.surge_text import READ_AS
 from springlife.report.terminal import quantity_of_life
@@ -50,7 +52,7 @@ def scatter(study: ScatterResult) -> Section:
         ("variable", "distribution", "source"),
         tuple((one.name.replace("_", " "), describe(one, study), f"{one.source} ({one.provenance})")
               for one in study.spreads),
-        left=3,
+        align="lllr",
     )  # fmt: skip
     blocks: list[Block] = [Text(text), lives, shares, spreads]
     if study.no_sensitivities:
@@ -90,7 +92,7 @@ def rig(test: RigTest) -> Section:
             (row.endurance, row.miner, row.criterion, "none" if cycles is None else significant(cycles, 3))
             for row, cycles in test.spread
         ),
-        left=3,
+        align="lllr",
     )
     notes = [Text(f"{finding.level}: {finding.message}.") for finding in test.findings]
     caption = "Cycles with the duty's damage over the test's deflection."
@@ -130,6 +132,16 @@ def surge(study: SurgeResult) -> Section:
             Figure("along-the-wire", "Range of deflection along the wire, over that of the record.",
                    "Range of each coil over that of the record, from the fixed to the moving end.",
                    lambda: along_the_wire(study))
+        )  # fmt: skip
+        blocks.append(
+            Figure("coil-stress", "Stress and damage along the coils, for the event that the wave moves most.",
+                   "Least and greatest stress of every coil with the wave and without.", lambda: coil_stress(study))
+        )  # fmt: skip
+    for number, sweep in enumerate(study.cams):
+        blocks.append(
+            Figure(f"cam-{number + 1}", f"Stress of the worst coil over the speed of {sweep.name}.",
+                   f"Least and greatest stress over turns a minute of {sweep.name}.",
+                   partial(cam_speeds, study, number))
         )  # fmt: skip
     return Section("Surge: the wave in the coils", tuple(blocks))
 

@@ -24,7 +24,7 @@ if TYPE_CHECKING:
     from springlife.life.damage import Floats
     from springlife.spring.helical import HelicalSpring
 
-POINTS = 14  # a half turn
+POINTS = 10  # a half turn
 WIDTH = 7.2  # inches
 TALLEST, LOWEST = 4.4, 1.9  # inches of the springs themselves
 
@@ -128,7 +128,7 @@ def _strip(x: Floats, z: Floats, width: float) -> Floats:
     heading = np.arctan2(np.gradient(z), steady)
     normal = np.array([-np.sin(heading), np.cos(heading)]) * width / 2
     line = np.array([x, z])
-    turn = np.linspace(0, math.pi, 7)[1:-1]
+    turn = np.linspace(0, math.pi, 6)[1:-1]
 
     def cap(at: int, angle: float) -> Floats:
         return line[:, [at]] + width / 2 * np.array([np.cos(angle - turn), np.sin(angle - turn)])

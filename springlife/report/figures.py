@@ -14,7 +14,7 @@ import numpy as np
 from springlife.errors import CriterionError
 from springlife.life.assess import model_of
 from springlife.life.damage import Floats
-from springlife.report.style import ACCENT, GREY, INK, PALE, PATTERNS, axes_in_style, tip
+from springlife.report.style import ACCENT, GREY, INK, PALE, PATTERNS, SIZE, axes_in_style, tip
 from springlife.strength import endurance
 from springlife.strength.criteria import CRITERIA
 from springlife.units import convert, significant
@@ -49,7 +49,7 @@ def haigh(result: Assessment) -> Figure:
     def to(values: Any) -> Floats:
         return np.asarray(values, dtype=np.float64) * scale
 
-    with axes_in_style() as (figure, axes):
+    with axes_in_style((SIZE[0], 4.0)) as (figure, axes):
         tau_a, tau_m = j.model.stress.cycles(j.cycles.low, j.cycles.high)
         total = j.cycle_damage.sum()
         share = j.cycle_damage / total if 0 < total < np.inf else np.zeros_like(j.cycle_damage)

@@ -26,7 +26,7 @@ def from_to(result: Assessment) -> Figure:
     j, unit = judged(result), result.say.units["length"]
     scale = convert(1.0, unit, "length")
     low, high = scale * j.cycles.low, scale * j.cycles.high
-    with axes_in_style((7.2, 4.8)) as (figure, axes):
+    with axes_in_style((7.2, 4.0)) as (figure, axes):
         if low.size:
             edge = 0.03 * (high.max() - low.min())
             edges = np.linspace(low.min() - edge, high.max() + edge, CELLS + 1)
@@ -50,7 +50,7 @@ def exceedance(result: Assessment) -> Figure:
     ranges = convert(1.0, unit, "length") * (j.cycles.high - j.cycles.low)
     order = np.argsort(-ranges, kind="stable")
     sums = np.cumsum(j.cycles.count[order])
-    with axes_in_style((7.2, 3.2)) as (figure, axes):
+    with axes_in_style((7.2, 2.6)) as (figure, axes):
         if sums.size:
             # From the first cycle on, the largest range holds until its own number is reached.
             x = np.concatenate([[min(0.5, sums[0])], sums])
@@ -72,7 +72,7 @@ def crossings(result: Assessment) -> Figure:
     """
     j, unit = judged(result), result.say.units["length"]
     scale = convert(1.0, unit, "length")
-    with axes_in_style((7.2, 3.2)) as (figure, axes):
+    with axes_in_style((7.2, 2.6)) as (figure, axes):
         if j.cycles.low.size:
             levels = np.linspace(j.cycles.low.min(), j.cycles.high.max(), LEVELS)
             axes.plot(risings(j.cycles.low, j.cycles.high, j.cycles.count, levels), scale * levels, color=ACCENT)

@@ -42,7 +42,7 @@ def life_curve(result: Assessment) -> Figure:
     tau_a, tau_m = j.model.stress.cycles(j.cycles.low, j.cycles.high)
     amplitude = j.model.criterion.equivalent(tau_a, tau_m, j.model.Ssu, j.model.Ssy)
     seen = np.isfinite(amplitude) & (amplitude > 0)
-    with figure_in_style((SIZE[0], 5.4)) as figure:
+    with figure_in_style((SIZE[0], 4.5)) as figure:
         top, bottom = figure.subplots(2, 1, height_ratios=(3, 1), sharex=True)
         order = np.argsort(-amplitude[seen], kind="stable")
         steps = amplitude[seen][order]
@@ -134,7 +134,7 @@ def by_range(result: Assessment) -> Figure:
     scale = convert(1.0, unit, "length")
     rows = range_classes(j)
     total = sum(row[3] for row in rows)
-    with figure_in_style((SIZE[0], 4.2)) as figure:
+    with figure_in_style((SIZE[0], 3.6)) as figure:
         top, bottom = figure.subplots(2, 1, sharex=True)
         for low, high, count, damage in rows:
             place = {"x": scale * low, "width": scale * (high - low), "align": "edge", "edgecolor": GREY}

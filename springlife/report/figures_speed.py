@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from springlife.report.style import ACCENT, GREY, INK, PALE, axes_in_style
+from springlife.report.style import ACCENT, GREY, INK, PALE, axes_in_style, drawable
 from springlife.units import convert
 
 if TYPE_CHECKING:
@@ -57,7 +57,7 @@ def cam_speeds(result: SurgeResult, cam: int = 0) -> Figure:
                     str(order), (meets, 0.955 * top), color=ACCENT, fontsize=7, ha="center", annotation_clip=True
                 )
         axes.set_xlabel(
-            f"speed of {sweep.name}, turns a minute; numbers: harmonic that meets the first surge frequency"
+            f"speed of {drawable(sweep.name)}, turns a minute; numbers: harmonic that meets the first surge frequency"
         )
         axes.set_ylabel(f"shear stress, {unit}")
         axes.legend(frameon=False, loc="lower left", bbox_to_anchor=(0.02, 0.18))

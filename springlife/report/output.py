@@ -60,6 +60,7 @@ def svg_of(figure: Figure) -> str:
         figure.savefig(text, format="svg", metadata=METADATA[".svg"])
     # The identifier has been escaped as an attribute, which is safe as text too.
     svg = re.sub(rf'<g id="{TIP}([^"]*)">', r'<g class="tip"><title>\1</title>', text.getvalue())
+    svg = svg.replace("'DejaVu Sans'", "'DejaVu Sans', Verdana, sans-serif")
     return re.sub(r'(?<= d=")[^"]*', _rounded, svg)
 
 

@@ -19,12 +19,15 @@ class Progress:
 
     def __call__(self, what: str, samples: int) -> None:
         """Say how far the work is, on one line that is written over."""
+        self.doing(f"reading {what}: {samples:,} samples")
+
+    def doing(self, what: str) -> None:
+        """Say what is being done now."""
         now = time.monotonic()
-        if not sys.stderr.isatty() or now - self._said < EVERY:
-            return
-        self._said, self._shown = now, True
-        sys.stderr.write(f"\r\x1b[Kreading {what}: {samples:,} samples")
-        sys.stderr.flush()
+        if sys.stderr.isatty() and now >= self._said + EVERY:
+            self._said, self._shown = now, True
+            sys.stderr.write(f"\r\x1b[K{what}")
+            sys.stderr.flush()
 
     def close(self) -> None:
         """Wipe the line."""

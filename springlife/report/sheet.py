@@ -9,7 +9,7 @@ from collections.abc import Mapping
 from datetime import date
 from importlib.resources import files
 from pathlib import Path
-from typing import TYPE_CHECKING, Any, Literal
+from typing import TYPE_CHECKING, Any
 
 from springlife.report.style import with_glyphs
 
@@ -17,10 +17,9 @@ if TYPE_CHECKING:
     from springlife.report.contents import Report
 
 PAPERS = {"a4": "a4", "letter": "us-letter"}
-STANDARDS: list[Literal["a-2b", "ua-1"]] = ["a-2b", "ua-1"]
 UNDATED = date(1970, 1, 1)  # archives want a date in the file; one that nobody takes for the report's
 LONGEST = 22  # characters of a word that a line can always hold
-WIDE, NARROW = 16, 60  # characters: columns of more than WIDE share the width, as if of NARROW at most
+WIDE, NARROW = 24, 60  # characters: columns of more than WIDE share the width, as if of NARROW at most
 _LONG_WORD = re.compile(rf"\S{{{LONGEST + 1},}}")
 _HASH = re.compile(r"[0-9a-f]{64}")
 
@@ -37,7 +36,7 @@ def sheet(report: Report, figures: Mapping[str, str], *, paper: str = "a4") -> b
     data["notes"] = [_replaced(lost)] if lost else []
     for block in [*data["front"], *(block for section in data["sections"] for block in section["blocks"])]:
         if block["kind"] == "table":
-            block["widths"] = widths(block["heads"], block["rows"], block["left"])
+            block["widths"] = widths(block["heads"], block["rows"])
     template = files("springlife").joinpath("report/templates/sheet.typ").read_text(encoding="utf-8")
     with tempfile.TemporaryDirectory() as name:
         folder = Path(name)
@@ -53,7 +52,7 @@ def sheet(report: Report, figures: Mapping[str, str], *, paper: str = "a4") -> b
                 format="pdf",
                 font_paths=[str(Path(matplotlib.get_data_path()) / "fonts" / "ttf")],
                 ignore_system_fonts=True,  # the same file on every machine
-                pdf_standards=STANDARDS,
+                pdf_standards=["a-2b", "ua-1"],
             )
         )
 
@@ -96,10 +95,10 @@ def _replaced(lost: set[str]) -> str:
     )
 
 
-def widths(heads: list[str], rows: list[list[str]], left: int) -> list[int]:
+def widths(heads: list[str], rows: list[list[str]]) -> list[int]:
     """Return a share of the width for each column; 0 for one that takes what it needs."""
     found = []
     for number, head in enumerate(heads):
         longest = max(len(text) for text in (head, *(row[number] for row in rows)))
-        found.append(min(longest, NARROW) if number < left and longest > WIDE else 0)
+        found.append(min(longest, NARROW) if longest > WIDE else 0)
     return found

@@ -28,9 +28,9 @@ STYLE = {
     "text.color": INK,
     "xtick.color": INK,
     "ytick.color": INK,
-    "figure.dpi": 130,
+    "figure.dpi": 110,
     "svg.hashsalt": "springlife",
-    "svg.fonttype": "path",
+    "svg.fonttype": "none",  # text stays text: it can be searched, selected and read aloud
 }
 
 
