@@ -50,14 +50,14 @@ def check_limits(overrides: Mapping[str, float]) -> None:
     Raises
     ------
     InputError
-        An unknown name, a value that is not above zero, a share of one or more, a yield factor under 1, or a
+        An unknown name, a value that is not above zero (shares may be zero), a share of one or more, a yield factor under 1, or a
         lower limit that is not below its upper one.
     """
     for key, value in overrides.items():
         if key not in LIMITS:
             raise InputError(f"limits.{key} is not known; {nearest(key, LIMITS)}")
-        if not value > 0 or (key in SHARES and not value < 1):
-            wanted = "a share between 0 and 1" if key in SHARES else "above zero"
+        if not (0 <= value < 1 if key in SHARES else value > 0):
+            wanted = "a share from 0 to under 1" if key in SHARES else "above zero"
             raise InputError(f"limits.{key} is {value:g}; it must be {wanted}")
     if overrides.get("yield_factor", 1.0) < 1:
         raise InputError(f"limits.yield_factor is {overrides['yield_factor']:g}; it must be at least 1")
