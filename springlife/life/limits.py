@@ -50,7 +50,8 @@ def check_limits(overrides: Mapping[str, float]) -> None:
     Raises
     ------
     InputError
-        An unknown name, a value that is not above zero (shares may be zero), a share of one or more, a yield factor under 1, or a
+        An unknown name, a value that is not above zero (shares may be zero), a share of one or more, a yield factor
+        under 1, or a
         lower limit that is not below its upper one.
     """
     for key, value in overrides.items():
