@@ -60,8 +60,13 @@ def svg_of(figure: Figure) -> str:
         figure.savefig(text, format="svg", metadata=METADATA[".svg"])
     # The identifier has been escaped as an attribute, which is safe as text too.
     svg = re.sub(rf'<g id="{TIP}([^"]*)">', r'<g class="tip"><title>\1</title>', text.getvalue())
-    svg = svg.replace("'DejaVu Sans'", "'DejaVu Sans', Verdana, sans-serif")
-    return re.sub(r'(?<= d=")[^"]*', _rounded, svg)
+    return re.sub(r"<[^>]*>", _tidied, svg)
+
+
+def _tidied(tag: re.Match[str]) -> str:
+    """Return a tag with short paths and a second choice of font; text between tags is left alone."""
+    named = tag[0].replace("'DejaVu Sans'", "'DejaVu Sans', Verdana, sans-serif")
+    return re.sub(r'(?<= d=")[^"]*', _rounded, named)
 
 
 def _rounded(path: re.Match[str]) -> str:

@@ -99,6 +99,6 @@ def widths(heads: list[str], rows: list[list[str]]) -> list[int]:
     """Return a share of the width for each column; 0 for one that takes what it needs."""
     found = []
     for number, head in enumerate(heads):
-        longest = max(len(text) for text in (head, *(row[number] for row in rows)))
+        longest = max((len(row[number]) for row in rows), default=len(head))
         found.append(min(longest, NARROW) if longest > WIDE else 0)
     return found
