@@ -16,6 +16,7 @@ import shutil
 import subprocess
 import sys
 import tempfile
+import threading
 import time
 from collections.abc import Callable
 from pathlib import Path
@@ -143,6 +144,20 @@ def loop_alone(x: np.ndarray, loop: Callable[[np.ndarray], object]) -> None:
         loop(x[start : start + counting.SEGMENT])
 
 
+def in_threads(number: int, x: np.ndarray) -> None:
+    """Run the compiled loop in several threads at once, each on everything: what the machine gives to two."""
+
+    def work() -> None:
+        scratch = stack.Scratch()
+        loop_alone(x, lambda part: kernels.reduce(part, scratch))
+
+    threads = [threading.Thread(target=work) for _ in range(number)]
+    for thread in threads:
+        thread.start()
+    for thread in threads:
+        thread.join()
+
+
 def best(jobs: dict[str, tuple[Callable[[], object], int]], clock: Callable[[], float]) -> dict[str, float]:
     """Samples a second of each job, the best of all rounds."""
     rates = dict.fromkeys(jobs, 0.0)
@@ -159,8 +174,8 @@ def speeds(samples: int) -> None:
     scratch = stack.Scratch()
     room = scratch.fit(counting.SEGMENT)
     print(f"{samples:,} samples; M samples/s of one thread, then ratios")
-    heads = ("count", "package", "NumPy", "loop", "count", "count", "NumPy", "2 : 1", "count", "loop", "count")
-    below = ("", "", "only", "alone", "+table", "/pack.", "/pack.", "workers", "/loop", "/C", "/sum")
+    heads = ("count", "package", "NumPy", "loop", "count", "count", "NumPy", "2 : 1", "2 : 1", "count", "loop", "count")
+    below = ("", "", "only", "alone", "+table", "/pack.", "/pack.", "workers", "loops", "/loop", "/C", "/sum")
     print(f"{'':20}" + "".join(f"{head:>9}" for head in heads) + f"\n{'':20}" + "".join(f"{x:>9}" for x in below))
     with tempfile.TemporaryDirectory() as folder:
         in_c = compile_c(folder)
@@ -181,10 +196,19 @@ def speeds(samples: int) -> None:
                     samples,
                 )
             r = best(jobs, time.process_time)
-            wall = best({str(n): (lambda x=x, n=n: count(x, workers=n), samples) for n in (1, 2)}, time.perf_counter)
+            wall = best(
+                {
+                    "1": (lambda x=x: count(x), samples),
+                    "2": (lambda x=x: count(x, workers=2), samples),
+                    "1 loop": (lambda x=x: in_threads(1, x), samples),
+                    "2 loops": (lambda x=x: in_threads(2, x), 2 * samples),
+                },
+                time.perf_counter,
+            )
             speed = [r[key] / 1e6 for key in ("count", "package", "numpy", "loop", "table")]
             ratio = [
-                r["count"] / r["package"], r["numpy"] / r["package"], wall["2"] / wall["1"], r["count"] / r["loop"],
+                r["count"] / r["package"], r["numpy"] / r["package"], wall["2"] / wall["1"],
+                wall["2 loops"] / wall["1 loop"], r["count"] / r["loop"],
                 r["loop"] / r["c"] if in_c else float("nan"), r["count"] / r["sum"],
             ]  # fmt: skip
             print(f"{name:20}" + "".join(f"{v:9.1f}" for v in speed) + "".join(f"{v:9.2f}" for v in ratio))
