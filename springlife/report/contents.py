@@ -222,7 +222,7 @@ def _margins(result: Assessment, j: Judgement) -> Iterator[tuple[str, str, str]]
     clearance = f"{say(s.solid_deflection, 'length')} to solid less {say(high, 'length')} greatest deflection"
     yield "solid clearance", say(s.solid_deflection - high, "length", 3) + share, clearance
     if s.buckling_deflection is None:
-        yield "buckling", "cannot", "short enough to buckle at no deflection"
+        yield "buckling", "none", "so short that it buckles at no deflection"
     else:
         ratio = significant(s.buckling_deflection / high, 3) if high > 0 else "-"
         guided = ", guided" if s.guided else ", not guided"

@@ -83,7 +83,8 @@ def haigh(result: Assessment) -> Figure:
         height = axes.get_ylim()[1]
         if limit > 0.05 * height:
             place = (limit - 0.05 * height, 0.05 * height)
-            axes.annotate("yield", place, xytext=(-5, 0), textcoords="offset points", color=GREY, ha="right")
+            axes.annotate("yield", place, xytext=(-5, 0), textcoords="offset points", color=GREY, ha="right",
+                          bbox={"facecolor": "white", "alpha": 0.8, "linewidth": 0, "pad": 1.0})  # fmt: skip
         axes.set_xlabel(f"mean shear stress, {unit}")
         axes.set_ylabel(f"alternating shear stress, {unit}")
         axes.legend(loc="upper right", frameon=False)
