@@ -87,6 +87,28 @@ class Located:
     index_high: int
 
 
+@dataclass
+class _Job:
+    """A segment that some thread counts apart."""
+
+    segment: Floats
+    scratch: Scratch
+    piece: Future[Piece | None]
+
+
+def _oldest(run: Any, ahead: deque[_Job]) -> tuple[Floats, Piece | None]:
+    """Take the oldest job; while another thread is still at it, do the next one that nobody has begun."""
+    while not ahead[0].piece.done():
+        job = next((job for job in ahead if job.piece.cancel()), None)
+        if job is None:
+            ahead[0].piece.result()
+        else:
+            job.piece = Future()
+            job.piece.set_result(run.reduce(job.segment, job.scratch))
+    job = ahead.popleft()
+    return job.segment, job.piece.result()
+
+
 class Tally:
     """Count a history that comes in chunks, in flat memory.
 
@@ -121,7 +143,7 @@ class Tally:
         self._stack, self._top = np.empty(64), 0
         self._minimum, self._maximum = math.inf, -math.inf
         self._fed = self._samples = 0
-        self._scratch = [Scratch() for _ in range(workers + 2)]  # for each worker, what is taken in, and pieces
+        self._scratch = [Scratch() for _ in range(2 * workers + 2)]  # what is ahead, and one for pieces between gaps
         self._places = np.empty(0, dtype=np.int64) if where else None
         self.largest: Located | None = None
 
@@ -151,7 +173,7 @@ class Tally:
     def _reduced(self, run: Any, values: NDArray[Any]) -> Iterator[tuple[Floats, Piece | None]]:
         """Count segments apart, in order; None where there are gaps or positions to follow.
 
-        Threads run ahead, but segments and the order in which they are joined are the same for any number of them.
+        Other threads run ahead, but segments and the order in which they are joined are the same for any number.
         """
         starts = range(0, values.size, SEGMENT)
         segments = (_floats(values[i : i + SEGMENT], self._fed) for i in starts)
@@ -161,16 +183,15 @@ class Tally:
         if self._workers == 1 or len(starts) == 1:
             yield from ((segment, run.reduce(segment, self._scratch[0])) for segment in segments)
             return
-        ahead: deque[tuple[Floats, Future[Piece | None]]] = deque()
-        with ThreadPoolExecutor(self._workers) as pool:
+        ahead: deque[_Job] = deque()
+        with ThreadPoolExecutor(self._workers - 1) as pool:
             for number, segment in enumerate(segments):
-                scratch = self._scratch[number % (self._workers + 1)]
-                ahead.append((segment, pool.submit(run.reduce, segment, scratch)))
-                if len(ahead) > self._workers:  # one is taken in while as many as there are workers are counted
-                    oldest, piece = ahead.popleft()
-                    yield oldest, piece.result()
-            for oldest, piece in ahead:
-                yield oldest, piece.result()
+                scratch = self._scratch[number % (2 * self._workers + 1)]
+                ahead.append(_Job(segment, scratch, pool.submit(run.reduce, segment, scratch)))
+                if len(ahead) > 2 * self._workers:
+                    yield _oldest(run, ahead)
+            while ahead:
+                yield _oldest(run, ahead)
 
     def _append(self, run: Any, low: Floats, high: Floats, points: Floats) -> None:
         """Join a piece to what is open."""
