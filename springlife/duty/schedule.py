@@ -68,12 +68,12 @@ class Pass:
         joined = np.concatenate([event.repeated.residue for event in self.events])
         owner = np.repeat(np.arange(len(self.events)), [event.repeated.residue.size for event in self.events])
         low, high, count, at_low, at_high = traced(joined, residue)
-        closed = [event.repeated for event in self.events]
+        closed = [event.repeated.settled(residue) for event in self.events]  # pieces between gaps included
         inside = np.repeat(np.arange(len(closed)), [part.low.size for part in closed])
         return EventCycles(
             low=np.concatenate([*(part.low for part in closed), low]),
             high=np.concatenate([*(part.high for part in closed), high]),
-            count=np.concatenate([*(part.number for part in closed), count]).astype(np.float64),
+            count=np.concatenate([*(part.count for part in closed), count]).astype(np.float64),
             event_low=np.concatenate([inside, owner[at_low]]),
             event_high=np.concatenate([inside, owner[at_high]]),
         )
