@@ -33,6 +33,7 @@ def test_success_run(reliability: float, confidence: float, springs: int) -> Non
 def test_success_run_with_a_life_factor() -> None:
     """Life factor 2 and Weibull slope 2 at R = C = 0.90: 6 springs (derived)."""
     assert success_run(0.9, 0.9, life_factor=2.0, weibull_slope=2.0) == 6
+    assert success_run(0.9, 0.9, life_factor=1e200, weibull_slope=9.0) == 1
 
 
 def as_blocks(low: float, high: float, cycles: int) -> str:
@@ -114,6 +115,8 @@ def test_a_test_longer_than_the_data_is_marked(tmp_path: Path) -> None:
         ({"reliability": 1.0}, "reliability is 1"),
         ({"confidence": 0.0}, "confidence is 0"),
         ({"life_factor": -1.0}, "life factor is -1"),
+        ({"life_factor": 1e-200, "weibull_slope": 9.0}, "more than 1e"),
+        ({"reliability": 0.9999999999999}, "more than 1e"),
         ({"low": 0.040, "high": 0.050}, "some damage"),
     ],
 )

@@ -176,6 +176,12 @@ def test_nothing_is_offered_for_a_duty_that_is_withheld(tmp_path: Path) -> None:
     assert not result.found and {"lift-off"} <= {name for miss in result.misses for name in miss.failed}
 
 
+@pytest.mark.parametrize("high", ["-1 mm", "0 mm"])
+def test_a_duty_that_never_compresses_the_spring_is_refused(high: str, tmp_path: Path) -> None:
+    with pytest.raises(InputError, match="never compresses the spring"):
+        sized(tmp_path, GRID, QUIET.replace('"5 mm"', '"-5 mm"').replace('"20 mm"', f'"{high}"'))
+
+
 def test_a_modulus_of_the_drawn_wire_is_not_that_of_another_grade(tmp_path: Path) -> None:
     given = QUIET.replace("total_coils", 'shear_modulus = "78 GPa"\ntotal_coils')
     moduli = {one.spring.grade.name: one.spring.G for one in sized(tmp_path, GRID + 'grades = ["A401"]\n', given).found}
@@ -249,6 +255,13 @@ def test_series_rise() -> None:
     [
         ('[size]\ngoal = "weight"\n', "size.goal"),
         ('[size]\nsizes = ["9 mm"]\n', "leaves no spring"),
+        ("[size]\nsizes = []\n", "size.sizes"),
+        ('[size]\nsizes = "metrik"\n', "did you mean .metric"),
+        ('[size]\nsizes = ["2 N"]\n', "size.sizes"),
+        ('[size]\nsizes = ["0 mm"]\n', "size.sizes: '0 mm' is no wire diameter"),
+        ("[size]\nsizes = [2.0]\n", "size.sizes"),
+        ("[size]\npeened = [1]\n", "size.peened"),
+        ("[size]\ngrades = []\n", "size.grades"),
         ('[size]\nlargest_outer_diameter = "0.1 mm"\n', "leaves no spring"),
         ('[size]\ngrades = ["A999"]\n', "A999"),
         ('[size]\nrate = "3 mm"\n', "size.rate"),

@@ -24,6 +24,8 @@ from springlife.life.findings import Finding, found, settle
 from springlife.life.limits import limit_values
 from springlife.units import significant
 
+MOST_SPRINGS = 1e6  # of one test; more is a number typed wrong
+
 
 @dataclass(frozen=True)
 class RigTest:
@@ -108,7 +110,7 @@ def success_run(reliability: float, confidence: float, *, life_factor: float = 1
     Raises
     ------
     InputError
-        A share outside 0 to 1, or a factor or slope that is not above zero.
+        A share outside 0 to 1, a factor or slope that is not above zero, or more springs than anybody tests.
 
     Notes
     -----
@@ -120,8 +122,14 @@ def success_run(reliability: float, confidence: float, *, life_factor: float = 1
     for name, value in (("life factor", life_factor), ("Weibull slope", weibull_slope)):
         if not 0 < value < math.inf:
             raise InputError(f"{name} is {value:g}; it must be above zero")
-    exact = math.log(1 - confidence) / (math.pow(life_factor, weibull_slope) * math.log(reliability))
-    return max(1, math.ceil(exact - 1e-12))
+    once = math.log(1 - confidence) / math.log(reliability)
+    power = weibull_slope * math.log(life_factor)
+    if math.log(once) - power > math.log(MOST_SPRINGS):
+        raise InputError(
+            f"reliability {reliability:.12g} at confidence {confidence:.12g} with life factor {life_factor:g} and "
+            f"Weibull slope {weibull_slope:g} takes more than {MOST_SPRINGS:g} springs; ask for less"
+        )
+    return max(1, math.ceil(once * math.exp(-power) - 1e-9))
 
 
 def rig(

@@ -98,6 +98,12 @@ def size(case: Case | str | Path) -> Sizing:
         stops = "; ".join(finding.message for finding in result.findings if finding.level == "stop")
         raise InputError(f"{result.case.path}: the drawn spring cannot be judged, so nothing can be sized: {stops}")
     search = _Search(result)
+    if search.hold.high <= 0:
+        high = result.say(search.hold.high, "length")
+        raise InputError(
+            f"{result.case.path}: the duty's greatest deflection is {high}, so it never compresses the spring "
+            "and nothing can be sized; check the datum and the sign"
+        )
     batches = [batch for first in search.wires() for batch in search.batches(first)]
     tried = sum(batch.size for batch in batches)
     if not tried:

@@ -4,13 +4,30 @@ from __future__ import annotations
 
 from typing import Annotated, Literal
 
-from pydantic import Field, model_validator
+from pydantic import Field, PlainValidator, model_validator
 
+from springlife.errors import nearest
 from springlife.life.fields import Table, quantity
-from springlife.units import METRIC
+from springlife.units import METRIC, parse
 
 Size = Annotated[float, quantity("length"), Field(gt=0)]
+SERIES = ("metric", "inch")
 Coils = Annotated[float, Field(gt=0)]
+
+
+def _sizes(given: object) -> str | list[float] | None:
+    """Read the name of a series, or diameters with their units."""
+    if isinstance(given, str):
+        if given not in SERIES:
+            raise ValueError(f"{given!r} is not known; {nearest(given, SERIES)}, or list diameters")
+        return given
+    if not isinstance(given, list) or not given:
+        raise ValueError(f"{given!r} cannot be used; give 'metric', 'inch' or a list such as ['2 mm', '2.25 mm']")
+    sizes = [parse(size, "length") for size in given]
+    for text, size in zip(given, sizes, strict=True):
+        if not size > 0:
+            raise ValueError(f"{text!r} is no wire diameter; it must be above zero")
+    return sizes
 
 
 class SizeInput(Table):
@@ -20,7 +37,7 @@ class SizeInput(Table):
     hold: Literal["stroke", "preload", "force"] = "stroke"
     grades: Annotated[list[str], Field(min_length=1)] | None = None
     peened: Annotated[list[bool], Field(min_length=1)] | None = None
-    sizes: Literal["metric", "inch"] | Annotated[list[Size], Field(min_length=1)] | None = None
+    sizes: Annotated[str | list[float] | None, PlainValidator(_sizes)] = None
     largest_outer_diameter: Size | None = None
     least_inner_diameter: Size | None = None
     diameter_step: Size | None = None
