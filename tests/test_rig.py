@@ -59,7 +59,8 @@ def test_assessing_the_proposed_test_gives_the_damage_back(
 
 def test_of_a_constant_amplitude_duty_the_test_is_the_duty(tmp_path: Path) -> None:
     test = rig(load_case(write_case(tmp_path, QUIET, None)))
-    assert (test.low, test.high, test.cycles) == (pytest.approx(0.005), pytest.approx(0.020), 100 * 100)
+    assert (test.low, test.high) == pytest.approx((0.005, 0.020))
+    assert test.cycles == 100 * 100  # 100 cycles a pass, 100 passes
 
 
 def test_spread_has_the_chosen_model_at_the_proposed_cycles() -> None:
@@ -82,7 +83,7 @@ def test_spread_has_the_chosen_model_at_the_proposed_cycles() -> None:
     ],
 )
 def test_refusals(options: dict[str, float], finding: str, tmp_path: Path) -> None:
-    test = rig(load_case(write_case(tmp_path, QUIET, None)), **options)  # type: ignore[arg-type]
+    test = rig(load_case(write_case(tmp_path, QUIET, None)), **options)
     assert finding in {f.code for f in test.findings if f.level == "stop"} and test.stopped
 
 
@@ -122,7 +123,7 @@ def test_a_test_longer_than_the_data_is_marked(tmp_path: Path) -> None:
 )
 def test_what_cannot_be_a_test(options: dict[str, float], words: str) -> None:
     with pytest.raises(InputError, match=words):
-        rig(PUMP, **options)  # type: ignore[arg-type]
+        rig(PUMP, **options)
 
 
 def test_no_test_equals_a_duty_without_damage(tmp_path: Path) -> None:
